@@ -1,0 +1,36 @@
+#include "io/error.h"
+
+#include <stdarg.h>
+#include <stdio.h>
+
+static void add(tg_error *e, bool warning, const char *file, int line, const char *format, va_list args)
+{
+    if (e->count < TG_MESSAGES) {
+        tg_message *m = &e->message[e->count];
+        snprintf(m->file, sizeof m->file, "%s", file ? file : "");
+        m->line = line;
+        m->warning = warning;
+        vsnprintf(m->what, sizeof m->what, format, args);
+    }
+    e->count++;
+}
+
+tg_code tg_fail(tg_error *e, tg_code code, const char *file, int line, const char *format, ...)
+{
+    if (!e) return code;
+    va_list args;
+    va_start(args, format);
+    add(e, false, file, line, format, args);
+    va_end(args);
+    if (e->code == TG_OK) e->code = code;
+    return code;
+}
+
+void tg_warn(tg_error *e, const char *file, int line, const char *format, ...)
+{
+    if (!e) return;
+    va_list args;
+    va_start(args, format);
+    add(e, true, file, line, format, args);
+    va_end(args);
+}

@@ -1,0 +1,84 @@
+#ifndef TG_FIELDS_H
+#define TG_FIELDS_H
+/** One table of fields per description: the same row serves the YAML reader, the command line and its help, the
+ *  keywords of a file and the parameters recorded with a result, so a key, its unit, range, default and sentence
+ *  are written once. */
+#include "io/error.h"
+
+#include <float.h>
+
+/** Values as they were given. line 0: not given, v holds the default. */
+typedef struct {
+    double v;
+    int line;
+} tg_number;
+typedef struct {
+    char *v; /* owned; NULL: none */
+    int line;
+} tg_text;
+typedef struct {
+    double v[3];
+    int line;
+} tg_vector;
+typedef struct {
+    void *v; /* {n} items of tg_field.item_size bytes, owned */
+    size_t n;
+    int line;
+} tg_list;
+
+typedef enum {
+    TG_NUMBER,  /* tg_number: a finite decimal number, or one of `words`: then v = NaN and line is given */
+    TG_INTEGER, /* tg_number holding a whole number of at most 2^53 */
+    TG_SWITCH,  /* tg_number: true or false; on a command line the bare option */
+    TG_CHOICE,  /* tg_number: the index of one of `words` */
+    TG_TEXT,    /* tg_text */
+    TG_PATH,    /* tg_text: in a description, relative to the file that holds it; resolved on reading */
+    TG_VECTOR2, /* tg_vector: [x, y]; on a command line x,y */
+    TG_VECTOR3, /* tg_vector: [x, y, z] */
+    TG_GROUP,   /* a mapping with its own table `item`, stored in place at `at` */
+    TG_LIST     /* tg_list of mappings with the table `item` */
+} tg_kind;
+
+#define TG_ABOVE_ZERO DBL_TRUE_MIN /* as `low`: any number greater than zero */
+
+typedef struct tg_field {
+    const char *key; /* NULL ends a table */
+    tg_kind kind;
+    size_t at;                   /* offsetof the value in the struct */
+    const char *unit;            /* "mm"; NULL: none */
+    const char *words;           /* "cylinder sphere", for TG_CHOICE and the special words of TG_NUMBER */
+    const char *standard;        /* the default as one would write it; NULL: none (NaN, NULL, or an empty list) */
+    const char *what;            /* one sentence without a full stop, for --help and error messages */
+    double low, high;            /* inclusive; both 0: any. Lists and vectors: range of each component */
+    const struct tg_field *item; /* TG_GROUP, TG_LIST */
+    size_t item_size;            /* TG_LIST */
+    bool required;
+} tg_field;
+
+/** Fill a zeroed struct with the defaults of its table.
+ *  @return TG_OK or TG_MACHINE */
+tg_code tg_fields_default(const tg_field *fields, void *base, tg_error *e);
+
+/** Release every text and list that the table owns; the struct is then all zero values. */
+void tg_fields_free(const tg_field *fields, void *base);
+
+/** The row of a key, or NULL. */
+const tg_field *tg_fields_find(const tg_field *fields, const char *key);
+
+/** Convert and check one text (not TG_GROUP or TG_LIST) and store it; the old value is released.
+ *  @param file,line  where the user wrote it (line 0 on a command line: 1 is stored, so that it counts as given)
+ *  @return TG_OK, TG_INPUT (TG_USAGE where file is NULL), TG_MACHINE */
+tg_code tg_field_set(const tg_field *field, void *base, const char *text, const char *file, int line, tg_error *e);
+
+/** Report an unknown key with the nearest known one. */
+tg_code tg_fields_unknown(const tg_field *fields, const char *key, const char *file, int line, tg_error *e);
+
+/** The word nearest to a mistyped one (Damerau-Levenshtein distance of at most a third of its length, rounded up).
+ *  @param words  separated by spaces  @param out  {64}  @return false: none is near */
+bool tg_nearest(const char *word, const char *words, char out[64]);
+
+/** The values as "key=value key=value", defaults included, lists left out: for provenance records.
+ *  @return bytes that the full text needs, as snprintf does */
+size_t tg_fields_text(const tg_field *fields, const void *base, char *out, size_t size);
+
+#endif

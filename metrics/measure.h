@@ -1,0 +1,36 @@
+#ifndef TG_MEASURE_H
+#define TG_MEASURE_H
+#include "metrics/target.h"
+
+/** How to measure, where a measure has a choice. */
+typedef enum { TG_BY_ANY, TG_BY_WIRE, TG_BY_EDGE } tg_by;
+#define TG_BY_WORDS "wire edge"
+
+/** One measure: a row of the table. A run adds one result or several (and curves, regions) for one solid; a figure that
+ *  cannot be had is added as null with a why. It fails only when memory runs out. */
+typedef struct tg_measure {
+    const char *name; /* "ct-number" */
+    const char *unit; /* "HU": the image's unit; "frequency": the job's; else as written */
+    const char *what; /* one sentence */
+    /** Does it make sense at this solid when nothing asks for it? */
+    bool (*applies)(const tg_target *t, int solid);
+    tg_code (*run)(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e);
+} tg_measure;
+
+extern const tg_measure tg_measures[]; /* ends with a NULL name */
+
+const tg_measure *tg_measure_find(const char *name);
+
+/* The rows of the table, one file each. Frequencies are 1/mm inside; results.c turns them to the job's unit. */
+tg_code tg_measure_ct_number(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_uniformity(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_cupping(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_noise(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_nps_peak(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_nps_mean(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_mtf50(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_mtf10(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_diameter(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_position(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+
+#endif

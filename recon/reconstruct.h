@@ -1,0 +1,26 @@
+#ifndef TG_RECONSTRUCT_H
+#define TG_RECONSTRUCT_H
+#include "io/image.h"
+#include "io/progress.h"
+#include "io/sinogram.h"
+#include "recon/recipe.h"
+
+/** One method of reconstruction: a row of a table. */
+typedef struct {
+    const char *name, *what;
+    tg_code (*run)(const tg_sinogram *s, const tg_recipe *r, tg_image *image, const tg_progress *progress, tg_error *e);
+} tg_method;
+
+extern const tg_method tg_methods[]; /* ends with a NULL name */
+
+/** Sinogram and recipe to image, one slice per row, in HU when the water value is known (recipe, then scan), else 1/mm.
+ *  Bit-identical for any number of threads.
+ *  @param image  created here; its facts and scan are copies of the sinogram's
+ *  @return TG_OK, TG_INPUT, TG_MACHINE, TG_STOPPED */
+tg_code tg_reconstruct(const tg_sinogram *s, const tg_recipe *r, const tg_progress *progress, tg_image *image,
+                       tg_error *e);
+
+/** Turn an image in 1/mm to HU in place: 1000 (mu - mu_water) / mu_water. */
+void tg_to_hu(tg_image *image, double mu_water_per_mm);
+
+#endif
