@@ -36,7 +36,8 @@ typedef enum {
     TG_VECTOR2, /* tg_vector: [x, y]; on a command line x,y */
     TG_VECTOR3, /* tg_vector: [x, y, z] */
     TG_GROUP,   /* a mapping with its own table `item`, stored in place at `at` */
-    TG_LIST     /* tg_list of mappings with the table `item` */
+    TG_LIST,    /* tg_list of mappings with the table `item` */
+    TG_LINE     /* int: the line where the mapping itself starts; a row without a key, see TG_LINE_AT */
 } tg_kind;
 
 #define TG_ABOVE_ZERO DBL_TRUE_MIN /* as `low`: any number greater than zero */
@@ -55,6 +56,12 @@ typedef struct tg_field {
     bool required;
 } tg_field;
 
+/** The row that stores the line of a mapping in the int member `line` of a struct. */
+#define TG_LINE_AT(type) \
+    { \
+        .key = "", .kind = TG_LINE, .at = offsetof(type, line) \
+    }
+
 /** Fill a zeroed struct with the defaults of its table.
  *  @return TG_OK or TG_MACHINE */
 tg_code tg_fields_default(const tg_field *fields, void *base, tg_error *e);
@@ -65,8 +72,16 @@ void tg_fields_free(const tg_field *fields, void *base);
 /** The row of a key, or NULL. */
 const tg_field *tg_fields_find(const tg_field *fields, const char *key);
 
+/** The line where a value was given; 0: it was not, and the default stands. */
+int tg_field_line(const tg_field *field, const void *base);
+
+/** What a value may be, for people: "0.1 to 20 mm", "above 0 mm", "cylinder, sphere or box", "a number or computed".
+ *  @return out */
+const char *tg_field_range(const tg_field *field, char out[256]);
+
 /** Convert and check one text (not TG_GROUP or TG_LIST) and store it; the old value is released.
- *  @param file,line  where the user wrote it (line 0 on a command line: 1 is stored, so that it counts as given)
+ *  @param text       a vector is written "x,y,z"
+ *  @param file,line  where the user wrote it (line 0, as on a command line: 1 is stored, so that it counts as given)
  *  @return TG_OK, TG_INPUT (TG_USAGE where file is NULL), TG_MACHINE */
 tg_code tg_field_set(const tg_field *field, void *base, const char *text, const char *file, int line, tg_error *e);
 
