@@ -7,7 +7,7 @@ T ?= 60
 
 PKGS := cfitsio libpng gsl yaml-0.1 jansson popt fftw3 fftw3f libxrl zlib
 LIBS_ := $(shell pkg-config --libs $(PKGS)) -lm
-CPP_ := -I. -D_POSIX_C_SOURCE=200809L $(shell pkg-config --cflags $(PKGS))
+CPP_ := -I. -D_XOPEN_SOURCE=700 $(shell pkg-config --cflags $(PKGS))
 WARN := -Wall -Wextra -Wshadow -Wconversion -Wcast-qual -Wmissing-prototypes -Wstrict-prototypes -Wvla -Wdouble-promotion \
         -Wformat=2 -Wundef -Wpointer-arith -Wwrite-strings -Wcast-align -Wnull-dereference
 # clang takes NAN and INFINITY themselves for promoted floats; gcc does not, and checks the rest
