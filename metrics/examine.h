@@ -7,6 +7,7 @@
 /** How results are said. */
 typedef struct {
     const char *water; /* solid that defined CT number 0: its own ct-number is no check; NULL: none */
+    double water_u;    /* relative standard uncertainty of its attenuation: goes into every ct-number; 0: none */
     bool lp_per_mm;    /* frequencies in lp/mm instead of lp/cm */
 } tg_examine_options;
 

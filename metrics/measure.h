@@ -12,6 +12,8 @@ typedef struct tg_measure {
     const char *name; /* "ct-number" */
     const char *unit; /* "HU": the image's unit; "frequency": the job's; else as written */
     const char *what; /* one sentence */
+    bool zero;        /* 0 is its ideal: a tolerance needs no nominal value */
+    bool by;          /* it can be measured in more than one way */
     /** Does it make sense at this solid when nothing asks for it? */
     bool (*applies)(const tg_target *t, int solid);
     tg_code (*run)(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e);

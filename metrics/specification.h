@@ -23,12 +23,20 @@ typedef struct {
     tg_text name;
     char *path;
     tg_conditions conditions;
+    tg_number unit; /* choice HU or 1/mm: that of limits on CT numbers and what is made of them */
     tg_list checks; /* of tg_check */
 } tg_specification;
 
 /** Read and check one: measures known, solids in the phantom (NULL: not looked at), limits that make sense. */
 tg_code tg_specification_read(const char *path, const tg_phantom *phantom, tg_specification *s, tg_error *e);
 void tg_specification_free(tg_specification *s);
+
+/** The solid that a check looks at. */
+const char *tg_check_solid(const tg_check *c);
+
+/** Report a solid that the phantom does not have, with the nearest one. */
+tg_code tg_solid_unknown(const tg_phantom *phantom, const char *key, const tg_text *name, const char *path,
+                         tg_error *e);
 
 /** @param why  {200} what differs  @return false: no specification for these conditions */
 bool tg_specification_covers(const tg_specification *s, const tg_image *image, char why[200]);
