@@ -37,7 +37,7 @@ typedef enum {
     TG_VECTOR3, /* tg_vector: [x, y, z] */
     TG_GROUP,   /* a mapping with its own table `item`, stored in place at `at` */
     TG_LIST,    /* tg_list of mappings with the table `item` */
-    TG_LINE     /* int: the line where the mapping itself starts; a row without a key, see TG_LINE_AT */
+    TG_LINE     /* int: the line where the mapping itself starts; the first row of a table, see TG_LINE_AT */
 } tg_kind;
 
 #define TG_ABOVE_ZERO DBL_TRUE_MIN /* as `low`: any number greater than zero */
@@ -49,17 +49,17 @@ typedef struct tg_field {
     const char *unit;            /* "mm"; NULL: none */
     const char *words;           /* "cylinder sphere", for TG_CHOICE and the special words of TG_NUMBER */
     const char *standard;        /* the default as one would write it; NULL: none (NaN, NULL, or an empty list) */
-    const char *what;            /* one sentence without a full stop, for --help and error messages */
+    const char *what;            /* one sentence without a full stop, for --help and error messages; never NULL */
     double low, high;            /* inclusive; both 0: any. Lists and vectors: range of each component */
     const struct tg_field *item; /* TG_GROUP, TG_LIST */
     size_t item_size;            /* TG_LIST */
     bool required;
 } tg_field;
 
-/** The row that stores the line of a mapping in the int member `line` of a struct. */
+/** The first row of a table: stores the line of a mapping in the int member `line` of a struct. */
 #define TG_LINE_AT(type) \
     { \
-        .key = "", .kind = TG_LINE, .at = offsetof(type, line) \
+        .key = "", .kind = TG_LINE, .at = offsetof(type, line), .what = "" \
     }
 
 /** Fill a zeroed struct with the defaults of its table.
