@@ -12,7 +12,7 @@ typedef struct {
     size_t n_materials, n_solids;
 } tg_phantom;
 
-enum { TG_MOST_SOLIDS = 256 };
+enum { TG_MOST_SOLIDS = 256 }; /* and materials: a description has no more of either */
 
 /** Read a description (keys: see phantoms/README.md). All errors of the file are reported.
  *  @return TG_OK, TG_INPUT, TG_MACHINE; on failure the struct is released already */
