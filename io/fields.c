@@ -2,102 +2,11 @@
 
 #include "io/memory.h"
 
-#include <ctype.h>
 #include <math.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-
-enum { WORD = 64 };
-
-/* A user's text inside a message: one line of moderate length, whatever bytes it holds. */
-typedef struct {
-    char text[48];
-} shown;
-
-static shown show(const char *text)
-{
-    shown s = {{0}};
-    size_t n = strlen(text);
-    const bool cut = n >= sizeof s.text - 3;
-    if (cut) {
-        n = sizeof s.text - 4;
-        while (n && ((unsigned char)text[n] & 0xc0) == 0x80)
-            n--; /* not through a UTF-8 character */
-    }
-    for (size_t i = 0; i < n; i++)
-        s.text[i] = iscntrl((unsigned char)text[i]) ? '?' : text[i];
-    if (cut) memcpy(s.text + n, "...", 4);
-    return s;
-}
-
-/* The next of several words, or NULL.  *words moves behind it. */
-static const char *next_word(const char **words, char out[WORD])
-{
-    const char *from = *words ? *words + strspn(*words, " ") : "";
-    const size_t n = strcspn(from, " ");
-    if (n == 0 || n >= WORD) return NULL;
-    memcpy(out, from, n);
-    out[n] = '\0';
-    *words = from + n;
-    return out;
-}
-
-/* Index of a word among several, or -1. */
-static int word_index(const char *word, const char *words)
-{
-    char known[WORD];
-    for (int i = 0; next_word(&words, known); i++)
-        if (!strcmp(word, known)) return i;
-    return -1;
-}
-
-static bool word_at(const char *words, int index, char out[WORD])
-{
-    for (int i = 0; next_word(&words, out); i++)
-        if (i == index) return true;
-    return false;
-}
-
-/* Letters to insert, drop, change or swap with their neighbour, in lower case: the optimal string alignment. */
-static size_t distance(const char *a, const char *b)
-{
-    const size_t n = strlen(a), m = strlen(b);
-    size_t row[3][WORD + 1];
-    for (size_t j = 0; j <= m; j++)
-        row[0][j] = j;
-    for (size_t i = 1; i <= n; i++) {
-        size_t *now = row[i % 3], *last = row[(i + 2) % 3], *before = row[(i + 1) % 3];
-        now[0] = i;
-        for (size_t j = 1; j <= m; j++) {
-            const int p = tolower((unsigned char)a[i - 1]), q = tolower((unsigned char)b[j - 1]);
-            size_t best = last[j - 1] + (p != q);
-            if (last[j] + 1 < best) best = last[j] + 1;
-            if (now[j - 1] + 1 < best) best = now[j - 1] + 1;
-            if (i > 1 && j > 1 && p == tolower((unsigned char)b[j - 2]) && q == tolower((unsigned char)a[i - 2]) &&
-                before[j - 2] + 1 < best)
-                best = before[j - 2] + 1;
-            now[j] = best;
-        }
-    }
-    return row[n % 3][m];
-}
-
-bool tg_nearest(const char *word, const char *words, char out[64])
-{
-    const size_t n = strlen(word);
-    if (n == 0 || n >= WORD) return false;
-    size_t best = (n + 2) / 3 + 1;
-    char known[WORD];
-    while (next_word(&words, known)) {
-        const size_t d = distance(word, known);
-        if (d >= best) continue;
-        best = d;
-        memcpy(out, known, WORD);
-    }
-    return best <= (n + 2) / 3;
-}
 
 static void *at(const tg_field *field, void *base)
 {
@@ -180,17 +89,10 @@ static void append_limits(const tg_field *f, char out[256])
     if (f->unit) append(out, " %s", f->unit);
 }
 
-/* "cylinder, sphere or box"; @param joint  between the last two */
-static void append_words(const char *words, const char *joint, char out[256])
+static void append_words(const char *words, char out[256])
 {
-    char word[WORD], next[WORD];
-    bool more = next_word(&words, word), first = true;
-    while (more) {
-        more = next_word(&words, next);
-        append(out, "%s%s", first ? "" : more ? ", " : joint, word);
-        memcpy(word, next, WORD);
-        first = false;
-    }
+    const size_t n = strlen(out);
+    tg_words_list(words, " or ", out + n, 256 - n);
 }
 
 const char *tg_field_range(const tg_field *field, char out[256])
@@ -203,11 +105,11 @@ const char *tg_field_range(const tg_field *field, char out[256])
         append_limits(field, out);
         if (field->words) {
             append(out, " or ");
-            append_words(field->words, " or ", out);
+            append_words(field->words, out);
         }
         break;
     case TG_SWITCH: append(out, "true or false"); break;
-    case TG_CHOICE: append_words(field->words, " or ", out); break;
+    case TG_CHOICE: append_words(field->words, out); break;
     case TG_TEXT: append(out, "a text"); break;
     case TG_PATH: append(out, "the name of a file"); break;
     case TG_VECTOR2:
@@ -283,20 +185,20 @@ static tg_code no_number(const place *p, const char *text, const char *end)
     const tg_field *f = p->field;
     const int n = end - text < 32 ? (int)(end - text) : 32;
     const char *rest = skip_blanks(end);
-    char near[WORD], range[256];
+    char near[TG_WORD], range[256];
     const char *kind = f->kind == TG_INTEGER ? "a whole number" : "a number";
     if (end > text && f->unit && !strcmp(rest, f->unit))
-        return wrong(p, "'%s' is not %s; write %.*s, in %s", show(text).text, kind, n, text, f->unit);
+        return wrong(p, "'%s' is not %s; write %.*s, in %s", tg_show(text).text, kind, n, text, f->unit);
     if (end > text && end[0] == ',' && skip_digits(end + 1) > end + 1 && !*skip_digits(end + 1)) {
-        const shown fraction = show(end + 1);
+        const tg_shown fraction = tg_show(end + 1);
         if (strlen(end + 1) == 3) /* perhaps thousands are meant */
-            return wrong(p, "'%s' is not %s; write %.*s.%s or %.*s%s", show(text).text, kind, n, text, fraction.text, n,
-                         text, fraction.text);
-        return wrong(p, "'%s' is not %s; write %.*s.%s", show(text).text, kind, n, text, fraction.text);
+            return wrong(p, "'%s' is not %s; write %.*s.%s or %.*s%s", tg_show(text).text, kind, n, text, fraction.text,
+                         n, text, fraction.text);
+        return wrong(p, "'%s' is not %s; write %.*s.%s", tg_show(text).text, kind, n, text, fraction.text);
     }
     if (f->words && tg_nearest(text, f->words, near))
-        return wrong(p, "'%s' is not known; did you mean '%s'?", show(text).text, near);
-    return wrong(p, "'%s' is not %s; write %s", show(text).text, kind, tg_field_range(f, range));
+        return wrong(p, "'%s' is not known; did you mean '%s'?", tg_show(text).text, near);
+    return wrong(p, "'%s' is not %s; write %s", tg_show(text).text, kind, tg_field_range(f, range));
 }
 
 static tg_code read_number(const place *p, const char *text, double *v)
@@ -309,29 +211,29 @@ static tg_code read_number(const place *p, const char *text, double *v)
     char *stop;
     const double x = strtod(text, &stop);
     if (stop != end) return no_number(p, text, end); /* the process left the "C" locale */
-    if (!isfinite(x)) return wrong(p, "'%s' is too large; write %s", show(text).text, tg_field_range(f, range));
+    if (!isfinite(x)) return wrong(p, "'%s' is too large; write %s", tg_show(text).text, tg_field_range(f, range));
     if (f->kind == TG_INTEGER && (x != floor(x) || fabs(x) > 0x1p53))
-        return wrong(p, "'%s' is not a whole number; write %s", show(text).text, tg_field_range(f, range));
-    if (!in_range(f, x)) return wrong(p, "%s is out of range; write %s", show(text).text, tg_field_range(f, range));
+        return wrong(p, "'%s' is not a whole number; write %s", tg_show(text).text, tg_field_range(f, range));
+    if (!in_range(f, x)) return wrong(p, "%s is out of range; write %s", tg_show(text).text, tg_field_range(f, range));
     *v = x;
     return TG_OK;
 }
 
 static tg_code read_switch(const place *p, const char *text, double *v)
 {
-    const int i = word_index(text, "false true no yes");
-    if (i < 0) return wrong(p, "'%s' is not true or false", show(text).text);
+    const int i = tg_word_index(text, "false true no yes");
+    if (i < 0) return wrong(p, "'%s' is not true or false", tg_show(text).text);
     *v = i % 2;
     return TG_OK;
 }
 
 static tg_code read_choice(const place *p, const char *text, double *v)
 {
-    char near[WORD], range[256];
-    const int i = word_index(text, p->field->words);
+    char near[TG_WORD], range[256];
+    const int i = tg_word_index(text, p->field->words);
     if (i < 0 && tg_nearest(text, p->field->words, near))
-        return wrong(p, "'%s' is not known; did you mean '%s'?", show(text).text, near);
-    if (i < 0) return wrong(p, "'%s' is not known; write %s", show(text).text, tg_field_range(p->field, range));
+        return wrong(p, "'%s' is not known; did you mean '%s'?", tg_show(text).text, near);
+    if (i < 0) return wrong(p, "'%s' is not known; write %s", tg_show(text).text, tg_field_range(p->field, range));
     *v = i;
     return TG_OK;
 }
@@ -341,19 +243,18 @@ static tg_code read_vector(const place *p, const char *text, tg_vector *out)
     const int want = components(p->field);
     tg_vector v = {{0}, 0};
     int n = 0;
-    for (const char *from = text; n < 4; from += strcspn(from, ",") + 1) {
-        char part[WORD];
+    bool more = true;
+    for (const char *from = text; more && n <= want; n++) {
+        char part[TG_WORD] = "";
         const size_t length = strcspn(from, ",");
-        if (n < want) {
-            snprintf(part, sizeof part, "%.*s", length < WORD ? (int)length : WORD - 1, from);
-            const tg_code code = read_number(p, part, &v.v[n]);
-            if (code != TG_OK) return code;
-        }
-        n++;
-        if (!from[length]) break;
+        if (length < sizeof part) memcpy(part, from, length); /* longer: left empty, which is no number */
+        more = from[length];
+        from += length + 1;
+        const tg_code code = n < want ? read_number(p, part, &v.v[n]) : TG_OK;
+        if (code != TG_OK) return code;
     }
     if (n != want)
-        return wrong(p, "'%s' does not hold %d numbers; write %s", show(text).text, want,
+        return wrong(p, "'%s' does not hold %d numbers; write %s", tg_show(text).text, want,
                      p->file ? (want == 2 ? "[x, y]" : "[x, y, z]") : (want == 2 ? "x,y" : "x,y,z"));
     *out = v;
     return TG_OK;
@@ -389,7 +290,7 @@ static tg_code set(const place *p, void *base, const char *text, int given)
             code = read_switch(p, text, &v);
         else if (field->kind == TG_CHOICE)
             code = read_choice(p, text, &v);
-        else if (word_index(text, field->words) < 0)
+        else if (tg_word_index(text, field->words) < 0)
             code = read_number(p, text, &v);
         if (code == TG_OK) *(tg_number *)value = (tg_number){v, given};
         break;
@@ -411,7 +312,7 @@ static tg_code set(const place *p, void *base, const char *text, int given)
     }
     case LIST:
     case LINE:
-    case GROUP: return wrong(p, "'%s' is a single value; write %s", show(text).text, tg_field_range(field, range));
+    case GROUP: return wrong(p, "'%s' is a single value; write %s", tg_show(text).text, tg_field_range(field, range));
     }
     return code;
 }
@@ -494,109 +395,13 @@ tg_code tg_fields_unknown(const tg_field *fields, const char *key, const char *f
 {
     const char *dashes = file ? "" : "--", *what = file ? "key" : "option";
     const tg_code code = file ? TG_INPUT : TG_USAGE;
-    char words[2048] = "", known[256] = "", near[WORD];
+    char words[2048] = "", known[256] = "", near[TG_WORD];
     size_t n = 0;
     for (const tg_field *f = fields; f->key && n < sizeof words; f++)
         if (f->kind != TG_LINE) n += (size_t)snprintf(words + n, sizeof words - n, "%s ", f->key);
     if (tg_nearest(key, words, near))
-        return tg_fail(e, code, file, line, "unknown %s '%s%s'; did you mean '%s%s'?", what, dashes, show(key).text,
+        return tg_fail(e, code, file, line, "unknown %s '%s%s'; did you mean '%s%s'?", what, dashes, tg_show(key).text,
                        dashes, near);
-    append_words(words, ", ", known);
-    return tg_fail(e, code, file, line, "unknown %s '%s%s'; known here: %s", what, dashes, show(key).text, known);
-}
-
-/* ---- values to text ---- */
-
-/* A text that grows beyond its room only in length. */
-typedef struct {
-    char *out;
-    size_t size, length;
-} written;
-
-static void put(written *w, const char *format, ...) __attribute__((format(printf, 2, 3)));
-static void put(written *w, const char *format, ...)
-{
-    const bool room = w->length < w->size;
-    va_list args;
-    va_start(args, format);
-    const int n = vsnprintf(room ? w->out + w->length : NULL, room ? w->size - w->length : 0, format, args);
-    va_end(args);
-    w->length += n > 0 ? (size_t)n : 0;
-}
-
-/* The shortest text that reads back as the same number. */
-static void put_number(written *w, double v)
-{
-    char text[32];
-    for (int digits = 6; digits <= 17; digits++) {
-        snprintf(text, sizeof text, "%.*g", digits, v);
-        if (strtod(text, NULL) == v) break;
-    }
-    put(w, "%s", text);
-}
-
-static bool has_value(const tg_field *f, const void *base)
-{
-    const void *value = at_const(f, base);
-    switch (stored_as(f)) {
-    case NUMBER: return !isnan(((const tg_number *)value)->v) || ((const tg_number *)value)->line > 0;
-    case TEXT: return ((const tg_text *)value)->v;
-    case VECTOR: return !isnan(((const tg_vector *)value)->v[0]);
-    case LIST:
-    case LINE:
-    case GROUP: break;
-    }
-    return false;
-}
-
-static void put_number_or_word(written *w, const tg_field *f, double v)
-{
-    char word[WORD] = "";
-    if (f->kind == TG_SWITCH)
-        put(w, v != 0 ? "true" : "false");
-    else if (f->kind == TG_CHOICE)
-        put(w, "%s", word_at(f->words, (int)v, word) ? word : "");
-    else if (isnan(v))
-        put(w, "%s", word_at(f->words, 0, word) ? word : "");
-    else
-        put_number(w, v);
-}
-
-static void put_value(written *w, const tg_field *f, const void *base)
-{
-    const void *value = at_const(f, base);
-    if (stored_as(f) == NUMBER) {
-        put_number_or_word(w, f, ((const tg_number *)value)->v);
-    } else if (stored_as(f) == TEXT) {
-        const char *text = ((const tg_text *)value)->v;
-        const char *quote = strpbrk(text, " \t\n=") ? "'" : "";
-        put(w, "%s%s%s", quote, text, quote);
-    } else {
-        for (int i = 0; i < components(f); i++) {
-            if (i) put(w, ",");
-            put_number(w, ((const tg_vector *)value)->v[i]);
-        }
-    }
-}
-
-static void put_fields(written *w, const char *prefix, const tg_field *fields, const void *base)
-{
-    for (const tg_field *f = fields; f->key; f++) {
-        char inner[128];
-        if (f->kind == TG_GROUP) {
-            snprintf(inner, sizeof inner, "%s%s.", prefix, f->key);
-            put_fields(w, inner, f->item, at_const(f, base));
-        }
-        if (!has_value(f, base)) continue;
-        put(w, "%s%s%s=", w->length ? " " : "", prefix, f->key);
-        put_value(w, f, base);
-    }
-}
-
-size_t tg_fields_text(const tg_field *fields, const void *base, char *out, size_t size)
-{
-    written w = {out, size, 0};
-    if (size) out[0] = '\0';
-    put_fields(&w, "", fields, base);
-    return w.length;
+    tg_words_list(words, ", ", known, sizeof known);
+    return tg_fail(e, code, file, line, "unknown %s '%s%s'; known here: %s", what, dashes, tg_show(key).text, known);
 }

@@ -4,6 +4,7 @@
  *  keywords of a file and the parameters recorded with a result, so a key, its unit, range, default and sentence
  *  are written once. */
 #include "io/error.h"
+#include "io/words.h"
 
 #include <float.h>
 
@@ -87,10 +88,6 @@ tg_code tg_field_set(const tg_field *field, void *base, const char *text, const 
 
 /** Report an unknown key with the nearest known one. */
 tg_code tg_fields_unknown(const tg_field *fields, const char *key, const char *file, int line, tg_error *e);
-
-/** The word nearest to a mistyped one (Damerau-Levenshtein distance of at most a third of its length, rounded up).
- *  @param words  separated by spaces  @param out  {64}  @return false: none is near */
-bool tg_nearest(const char *word, const char *words, char out[64]);
 
 /** The values as "key=value key=value", defaults included, lists left out: for provenance records.
  *  @return bytes that the full text needs, as snprintf does */
