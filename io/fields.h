@@ -4,7 +4,7 @@
  *  keywords of a file and the parameters recorded with a result, so a key, its unit, range, default and sentence
  *  are written once. */
 #include "io/error.h"
-#include "io/words.h"
+#include "io/spelling.h"
 
 #include <float.h>
 

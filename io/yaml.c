@@ -141,7 +141,7 @@ static void read_list(reader *r, const tg_field *f, tg_list *list, const yaml_no
         const yaml_node_t *item = node_at(r, *i);
         if (item->type != YAML_MAPPING_NODE) {
             note(r, tg_fail(r->e, TG_INPUT, r->file, line_of(item), "%s: an item is a mapping, such as {%s: ...}",
-                            f->key, f->item->key));
+                            f->key, f->item[f->item->kind == TG_LINE].key));
             continue;
         }
         void *base = tg_append(&list->v, &list->n, f->item_size);

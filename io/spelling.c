@@ -1,4 +1,4 @@
-#include "io/words.h"
+#include "io/spelling.h"
 
 #include <ctype.h>
 #include <stdio.h>

@@ -1,5 +1,5 @@
-#ifndef TG_WORDS_H
-#define TG_WORDS_H
+#ifndef TG_SPELLING_H
+#define TG_SPELLING_H
 #include <stdbool.h>
 #include <stddef.h>
 
