@@ -15,6 +15,7 @@ typedef struct {
     double *autocorrelation; /* {2 half + 1, 2 half + 1} rows along y; 1 at lag 0; owned */
     double sd;               /* of the uniform part of the body, in the image's unit */
     double dof;              /* effective degrees of freedom of sd */
+    double pixels;           /* behind the texture, all slices together; 0: it is known exactly */
     bool from_slices;        /* from differences of slices; else from the detrended uniform part */
 } tg_noise;
 
