@@ -51,6 +51,8 @@ $(B)/%.o: %.c Makefile
 	@mkdir -p $(@D)
 	$(CC) $(CPP_) -MMD -MP $(C_) -c $< -o $@
 
+$(B)/metrics/results_file.o: CPP_ += -DTG_LIBRARIES='"$(shell for p in $(PKGS); do echo "$$p $$(pkg-config --modversion $$p)"; done | paste -sd, | sed 's/,/, /g')"'
+
 $(B)/embedded.c: scripts/embed $(EMBED)
 	@mkdir -p $(@D)
 	scripts/embed $(EMBED) > $@.part && mv $@.part $@

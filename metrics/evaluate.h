@@ -21,7 +21,7 @@ typedef struct {
 } tg_evaluated;
 
 typedef struct {
-    const tg_job *job;
+    const tg_job *job; /* NULL in a measurement of images */
     char *phantom_name;
     tg_evaluated *item; /* {n}, owned */
     size_t n;
@@ -35,7 +35,18 @@ typedef struct {
 tg_code tg_evaluate(const tg_job *job, const tg_progress *progress, tg_evaluation *out, tg_error *e);
 void tg_evaluation_free(tg_evaluation *ev);
 
-/** Write an evaluation into a folder: images as FITS and PNG, results.json, results.csv, run.json, report.html. */
-tg_code tg_evaluation_write(const tg_evaluation *ev, const char *folder, bool force, tg_error *e);
+/** Find the phantom in images (pooled), measure, and judge by a specification where it speaks of them.
+ *  @param specification  path, NULL: nothing is judged
+ *  @param item           zeroed but for recipe, image and image_name; the rest is set */
+tg_code tg_evaluate_images(const tg_image *image, size_t n, const tg_phantom *phantom, const char *specification,
+                           const tg_examine_options *options, const tg_progress *progress, tg_evaluated *item,
+                           tg_error *e);
+
+/** What a job will take, roughly: reads the scan's header or the scanner only.
+ *  @param seconds  on one core @param mib  at its peak */
+tg_code tg_evaluate_estimate(const tg_job *job, double *seconds, double *mib, tg_error *e);
+
+/** The exit status that a verdict asks for: TG_OK, TG_FAILS or TG_OPEN. */
+tg_code tg_verdict_code(tg_verdict verdict);
 
 #endif
