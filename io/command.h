@@ -8,13 +8,11 @@
 
 /** What every command is called with. */
 typedef struct {
-    char **operand; /* {n} */
+    const char **operand; /* {n} */
     int n;
-    bool check; /* --check: validate, estimate, run nothing */
-    bool force; /* --force: replace what stands in the way */
-    bool quiet;
-    int threads;
-    char *output; /* -o, NULL: not given */
+    bool check;         /* --check: validate, estimate, run nothing */
+    bool force;         /* --force: replace what stands in the way */
+    const char *output; /* -o, NULL: not given */
     const tg_progress *progress;
     tg_code verdict; /* set by the command: TG_OK, TG_FAILS or TG_OPEN, when it ran without error */
 } tg_call;
@@ -33,7 +31,12 @@ typedef struct {
 } tg_command;
 
 /** The program: pick the command, read options, run it, print messages, answer the exit status.
- *  @param commands  ends with a NULL name */
-int tg_program(const tg_command *commands, int argc, char **argv);
+ *  --help, --quiet, --threads and interrupts are seen to here; so are write errors of standard output.
+ *  @param commands  ends with NULL */
+int tg_program(const tg_command *const *commands, int argc, char **argv);
+
+/* The commands, each on the lowest floor that can do its whole job: NAME_command.c. */
+extern const tg_command tg_simulate_command, tg_reconstruct_command, tg_measure_command, tg_evaluate_command,
+    tg_show_command;
 
 #endif
