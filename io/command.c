@@ -16,7 +16,7 @@
 #include <time.h>
 #include <unistd.h>
 
-enum { WIDTH = 80, LABEL = 26, MOST_OPTIONS = 64 };
+enum { WIDTH = 80, MOST_OPTIONS = 64 };
 
 static const char cautions[] =
     "Not for diagnosis. Exposures only by trained staff under local rules. Acceptance decisions belong to the "
@@ -88,12 +88,12 @@ static void wrap(int column, int from, const char *text)
     printf("\n");
 }
 
-/* A label and its text beside it, or below where the label is long. */
-static void print_item(const char *label, const char *text)
+/* A label and its text beside it from a column, or below where the label is long. */
+static void print_item(const char *label, int from, const char *text)
 {
-    int column = printf("  %-*s", LABEL - 2, label);
-    if (column > LABEL - 1) column = printf("\n%*s", LABEL, "") - 1;
-    wrap(column, LABEL, text);
+    printf("  %-*s", from - 2, label);
+    if ((int)strlen(label) > from - 4) printf("\n%*s", from, "");
+    wrap(from, from, text);
 }
 
 static const char *placeholder(const tg_field *f)
@@ -126,7 +126,7 @@ static void print_option(const tg_field *f, const char *file)
     const bool standard = f->standard && f->kind != TG_SWITCH;
     snprintf(text, sizeof text, "%s%s%s%s%s%s", f->what, *range ? "; " : "", range, f->required ? "; required" : "",
              standard ? "; default " : "", standard ? f->standard : "");
-    print_item(label, text);
+    print_item(label, 26, text);
 }
 
 static void print_help(const tg_command *c)
@@ -166,14 +166,13 @@ static void print_overview(const tg_command *const *commands)
     wrap(0, 0,
          TG_PROGRAM " reconstructs CT scans of test phantoms, measures the images against a specification and says "
                     "pass, fail or inconclusive, with an uncertainty on every figure.");
-    printf("\nUsage: %s COMMAND [options] FILE...\n\nCommands:\n", TG_PROGRAM);
+    printf("\nUsage: %s COMMAND [options] FILE...\n       %s COMMAND --help\n       %s --version\n\nCommands:\n",
+           TG_PROGRAM, TG_PROGRAM, TG_PROGRAM);
     for (const tg_command *const *c = commands; *c; c++)
-        print_item((*c)->name, (*c)->what);
-    print_item("COMMAND --help", "options of a command, with an example");
-    print_item("--version", "the version");
+        print_item((*c)->name, 16, (*c)->what);
     printf("\nExit status:\n");
     for (size_t i = 0; i < sizeof exits / sizeof *exits; i++)
-        print_item(exits[i][0], exits[i][1]);
+        print_item(exits[i][0], 6, exits[i][1]);
     printf("\n");
     wrap(0, 0, cautions);
 }
