@@ -31,7 +31,7 @@ static const char *formula_fault(const char *formula)
         } else if (isdigit((unsigned char)*c) && counted) {
             const char *behind = c + strspn(c, "0123456789.");
             char *end;
-            if (!(strtod(c, &end) > 0) || end != behind) return c;
+            if (!(strtod(c, &end) > 0) || end != behind || behind[-1] == '.') return c;
             c = behind;
         } else if (SymbolToAtomicNumber(symbol, NULL)) {
             c += strlen(symbol);
