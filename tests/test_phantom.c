@@ -39,9 +39,9 @@ START_TEST(later_displaces_earlier)
     PATHS(p, 0, 60, 0, 20, 24, "rods alone, above the body");
     PATHS(p, 20, 0, 2 * sqrt(2100), 0, 0, "beside the rods");
     PATHS(p, 55, 0, 0, 0, 0, "past everything");
-    /* at y = 8 the rods' half chords are sqrt(80); they overlap between -1.05 and 1.05 */
+    /* at y = 8 the rods' half chords are sqrt(80); a gap of 2.1 mm is left between them */
     const double h = sqrt(80);
-    PATHS(p, 8, 0, 2 * sqrt(2500 - 64) - 20 - 2 * h, 20, 2 * h, "off the middle");
+    PATHS(p, 8, 0, 2 * sqrt(2500 - 64) - 4 * h, 2 * h, 2 * h, "off the middle");
     ck_assert_int_eq(tg_phantom_solid_at(&p, (const double[3]){0, 0, 0}), 2);
     ck_assert_int_eq(tg_phantom_solid_at(&p, (const double[3]){-10, 1, 1}), 3);
     ck_assert_int_eq(tg_phantom_solid_at(&p, (const double[3]){-10, 3, 1}), 1);
