@@ -108,8 +108,8 @@ static tg_code check_method(const tg_job *job, const tg_recipe *r, tg_error *e)
         if (at < sizeof words) at += (size_t)snprintf(words + at, sizeof words - at, "%s%s", at ? " " : "", m->name);
     }
     const bool found = tg_nearest(r->method.v, words, near);
-    return tg_fail(e, TG_INPUT, job->path, r->method.line, "method: there is no method '%s'; %s %s", r->method.v,
-                   found ? "did you mean" : "there are:", found ? near : words);
+    return tg_fail(e, TG_INPUT, job->path, r->method.line, "method: there is no method '%s'; %s %s",
+                   tg_show(r->method.v).text, found ? "did you mean" : "there are:", found ? near : words);
 }
 
 /** A name becomes the name of files. */
@@ -120,7 +120,8 @@ static tg_code check_name(const tg_job *job, size_t at, tg_error *e)
     const size_t length = strlen(r->name.v);
     if (!length || length > 100 || *r->name.v == '.' || strspn(r->name.v, allowed) != length)
         return tg_fail(e, TG_INPUT, job->path, r->name.line,
-                       "name: '%s' cannot be the name of a file; use letters, digits and - _ . @ +", r->name.v);
+                       "name: '%s' cannot be the name of a file; use letters, digits and - _ . @ +",
+                       tg_show(r->name.v).text);
     for (size_t i = 0; i < at; i++)
         if (!strcmp(all[i].name.v, r->name.v))
             return tg_fail(e, TG_INPUT, job->path, r->name.line, "name: '%s' is taken by line %d; give each its own",
@@ -163,7 +164,8 @@ static tg_code check_scan(const tg_job *job, tg_error *e)
     tg_fits_kind kind;
     code = tg_fits_what(job->scan.v, &kind, e);
     if (code == TG_OK && kind != TG_FITS_SINOGRAM)
-        code = tg_fail(e, TG_INPUT, job->path, job->scan.line, "scan: '%s' holds no sinogram", job->scan.v);
+        code =
+            tg_fail(e, TG_INPUT, job->path, job->scan.line, "scan: '%s' holds no sinogram", tg_show(job->scan.v).text);
     const tg_number *const only_simulated[] = {&job->photons, &job->seed};
     for (size_t i = 0; i < 2; i++)
         if (only_simulated[i]->line)

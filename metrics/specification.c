@@ -63,9 +63,10 @@ static tg_code unknown(const char *key, const tg_text *name, const char *kind, c
 {
     char near[64];
     if (tg_nearest(name->v, words, near))
-        return tg_fail(e, TG_INPUT, path, name->line, "%s: there is no %s '%s'; did you mean '%s'?", key, kind, name->v,
-                       near);
-    return tg_fail(e, TG_INPUT, path, name->line, "%s: there is no %s '%s'; there are: %s", key, kind, name->v, words);
+        return tg_fail(e, TG_INPUT, path, name->line, "%s: there is no %s '%s'; did you mean '%s'?", key, kind,
+                       tg_show(name->v).text, near);
+    return tg_fail(e, TG_INPUT, path, name->line, "%s: there is no %s '%s'; there are: %s", key, kind,
+                   tg_show(name->v).text, words);
 }
 
 tg_code tg_solid_unknown(const tg_phantom *phantom, const char *key, const tg_text *name, const char *path, tg_error *e)
@@ -122,7 +123,7 @@ static tg_code check_one(const tg_specification *s, size_t at, const tg_phantom 
         const char *other = tg_check_solid(&all[i]);
         if (other && !strcmp(other, solid) && !strcmp(all[i].measure.v, c->measure.v))
             return tg_fail(e, TG_INPUT, s->path, c->line, "%s of '%s' is checked in line %d already; keep one of them",
-                           c->measure.v, solid, all[i].line);
+                           c->measure.v, tg_show(solid).text, all[i].line);
     }
     return code;
 }
