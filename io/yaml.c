@@ -89,12 +89,15 @@ static tg_code check_events(yaml_parser_t *parser, const char *text, size_t byte
             return tg_fail(e, TG_INPUT, file, line, "a second document begins here; keep one document in a file");
         if (type == YAML_STREAM_END_EVENT) break;
     }
-    if (!documents)
-        return tg_fail(e, TG_INPUT, file, 1, "is empty; tomogauge show --example prints files to start from");
     return TG_OK;
 }
 
 /* ---- the document against the table ---- */
+
+static const char *first_key(const tg_field *fields)
+{
+    return fields[fields->kind == TG_LINE].key;
+}
 
 static void read_mapping(reader *r, const yaml_node_t *node, const tg_field *fields, void *base);
 
@@ -119,7 +122,9 @@ static void read_vector(reader *r, const tg_field *f, void *base, const yaml_nod
     for (const int *i = node->data.sequence.items.start; i < node->data.sequence.items.top; i++) {
         const yaml_node_t *item = node_at(r, *i);
         if (item->type != YAML_SCALAR_NODE || strchr(scalar(item), ',') || n >= sizeof text) {
-            expected(r, f, node, line);
+            char range[256];
+            note(r, tg_fail(r->e, TG_INPUT, r->file, line, "%s: holds something else than numbers; write %s", f->key,
+                            tg_field_range(f, range)));
             return;
         }
         n += (size_t)snprintf(text + n, sizeof text - n, "%s%s", n ? "," : "", scalar(item));
@@ -141,7 +146,7 @@ static void read_list(reader *r, const tg_field *f, tg_list *list, const yaml_no
         const yaml_node_t *item = node_at(r, *i);
         if (item->type != YAML_MAPPING_NODE) {
             note(r, tg_fail(r->e, TG_INPUT, r->file, line_of(item), "%s: an item is a mapping, such as {%s: ...}",
-                            f->key, f->item[f->item->kind == TG_LINE].key));
+                            f->key, first_key(f->item)));
             continue;
         }
         void *base = tg_append(&list->v, &list->n, f->item_size);
@@ -255,8 +260,11 @@ tg_code tg_yaml_parse(const char *text, size_t bytes, const char *name, const tg
     TG_TRY(start(&parser, text, bytes, e));
     if (!yaml_parser_load(&parser, &document)) TG_TRY(complain(&parser, text, bytes, name, e));
     const yaml_node_t *root = yaml_document_get_root_node(&document);
+    if (!root || (root->type == YAML_SCALAR_NODE && !root->data.scalar.length))
+        TG_TRY(tg_fail(e, TG_INPUT, name, 1, "is empty; tomogauge show --example prints files to start from"));
     if (root->type != YAML_MAPPING_NODE)
-        TG_TRY(tg_fail(e, TG_INPUT, name, line_of(root), "a description is a mapping, such as `%s: ...`", fields->key));
+        TG_TRY(tg_fail(e, TG_INPUT, name, line_of(root), "a description is a mapping, such as `%s: ...`",
+                       first_key(fields)));
     reader r = {&document, name, e, TG_OK};
     read_mapping(&r, root, fields, out);
     code = r.code;
