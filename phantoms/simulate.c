@@ -60,6 +60,43 @@ static size_t add_noise(float *p, size_t channels, double photons, tg_random str
     return none;
 }
 
+/** How far a solid reaches from the rotation axis at most [mm]: exact for upright ones. */
+static double reach_mm(const tg_solid *s)
+{
+    const bool flat = s->shape == TG_SOLID_BOX || s->shape == TG_WEDGE;
+    const double across = flat ? hypot(s->half_mm[0], s->half_mm[1]) : fmax(s->half_mm[0], s->half_mm[1]);
+    return hypot(s->centre_mm[0], s->centre_mm[1]) + across * fmax(1, s->taper) +
+           s->half_mm[2] * hypot(s->turn[2][0], s->turn[2][1]);
+}
+
+/** Smallest width of a solid in the plane of the scan, as far as it is not cut aslant [mm]. */
+static double width_mm(const tg_solid *s)
+{
+    double least = INFINITY;
+    for (int i = 0; i < 3; i++)
+        if (hypot(s->turn[i][0], s->turn[i][1]) > 0.5) least = fmin(least, 2 * s->half_mm[i]);
+    return least;
+}
+
+/** The phantom stands clear of the source, and sub-rays do not step over what is in it (a warning). */
+static tg_code check_fit(const tg_phantom *p, const tg_scanner *s, tg_error *e)
+{
+    const double aperture_mm = s->aperture * tg_scan_pitch_mm(&s->scan);
+    for (size_t i = 0; i < p->n_solids; i++) {
+        const tg_solid *solid = &p->solid[i];
+        if (s->scan.geometry != TG_PARALLEL && reach_mm(solid) > s->scan.source_axis_mm)
+            return tg_fail(e, TG_INPUT, p->path, solid->line,
+                           "'%s' reaches %.1f mm from the axis, beyond the source at %g mm", solid->name.v,
+                           reach_mm(solid), s->scan.source_axis_mm);
+        if (aperture_mm > s->subrays * width_mm(solid))
+            tg_warn(
+                e, p->path, solid->line,
+                "'%s' is %g mm thin and can fall between sub-rays; the scanner's subrays: %.0f or more would meet it",
+                solid->name.v, width_mm(solid), ceil(aperture_mm / width_mm(solid)));
+    }
+    return TG_OK;
+}
+
 static tg_code set_text(tg_text *t, const char *value, tg_error *e)
 {
     if (!value) return TG_OK;
@@ -94,6 +131,7 @@ tg_code tg_simulate(const tg_phantom *p, const tg_scanner *s, const tg_progress 
     const beam b = {p, s, mu_per_mm};
     const size_t channels = s->scan.channels, views = s->scan.rows * s->scan.views;
     size_t none = 0;
+    TG_TRY(check_fit(p, s, e));
     TG_TRY(tg_phantom_mu(p, s->energy_kev, mu_per_mm, e));
     TG_TRY(tg_sinogram_create(&s->scan, &made, e));
     TG_TRY(set_facts(p, s, &made.facts, e));
