@@ -273,6 +273,7 @@ tg_code tg_fits_create(tg_fits *f, const char *path, int axes, const size_t n[3]
     f->handle = handle;
     fits_create_imgll(handle, FLOAT_IMG, axes, size, &f->status);
     tg_fits_put_text(f, "CREATOR", TG_PROGRAM " " TG_VERSION, "program that wrote this file");
+    tg_fits_put_text(f, "LONGSTRN", "OGIP 1.0", "long texts go on in CONTINUE cards");
 done:
     if (code != TG_OK) tg_fits_close(f);
     return code;

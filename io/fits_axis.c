@@ -11,9 +11,9 @@ const tg_fits_unit tg_fits_angles[] = {{"deg", 1}, {"rad", 1 / TG_DEGREE}, {NULL
 
 double tg_fits_unit_size(const tg_fits_unit *units, const char *name)
 {
-    while (units->name && strcmp(units->name, name) != 0)
-        units++;
-    return units->name ? units->size : NAN;
+    for (; units->name; units++)
+        if (!strcmp(units->name, name)) return units->size;
+    return NAN;
 }
 
 enum { KEY = 16 };

@@ -178,7 +178,7 @@ static tg_code read_samples(tg_fits *f, tg_image *image, double size)
 {
     const tg_code code = tg_fits_samples(f, image->v);
     for (size_t i = 0; code == TG_OK && i < tg_grid_samples(&image->grid); i++)
-        image->v[i] = isfinite(image->v[i]) ? (float)(image->v[i] * size) : NAN;
+        image->v[i] = isfinite(image->v[i]) ? (float)((double)image->v[i] * size) : NAN;
     return code;
 }
 

@@ -70,14 +70,13 @@ void tg_fits_put_facts(tg_fits *f, const tg_facts *facts)
 {
     for (const tg_field *field = tg_fact_fields; field->key; field++) {
         const void *value = (const char *)facts + field->at;
-        const double v = field->kind == TG_TEXT ? NAN : ((const tg_number *)value)->v;
         char comment[64];
         snprintf(comment, sizeof comment, "%s%s%s%s", field->unit ? "[" : "", field->unit ? field->unit : "",
                  field->unit ? "] " : "", field->what);
         if (field->kind == TG_TEXT)
             tg_fits_put_text(f, field->key, ((const tg_text *)value)->v, comment);
-        else if (!isnan(v))
-            tg_fits_put_number(f, field->key, v, comment);
+        else if (!isnan(((const tg_number *)value)->v))
+            tg_fits_put_number(f, field->key, ((const tg_number *)value)->v, comment);
     }
 }
 
@@ -178,8 +177,9 @@ static size_t to_line_integrals(float *v, size_t n, double full, double least)
 {
     size_t low = 0;
     for (size_t i = 0; i < n; i++) {
-        low += v[i] < least;
-        v[i] = (float)-log(fmax(v[i], least) / full);
+        const double sample = v[i];
+        low += sample < least;
+        v[i] = (float)-log(fmax(sample, least) / full);
     }
     return low;
 }
@@ -322,7 +322,7 @@ tg_code tg_fits_read_sinogram(const char *path, tg_sinogram *out, tg_error *e)
     tg_fits f;
     tg_scan scan = {0};
     tg_fits_axis view;
-    meaning m;
+    meaning m = LINE_INTEGRAL;
     *out = (tg_sinogram){0};
     TG_TRY(tg_fits_open(&f, path, e));
     if (f.axes < 2) TG_TRY(tg_fail(e, TG_INPUT, path, 0, "has one axis; a sinogram has channels and views"));
