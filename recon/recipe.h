@@ -19,6 +19,9 @@ typedef struct {
 
 extern const tg_field tg_recipe_fields[]; /* all but name and specification, which only a job has */
 
+/** The 0-based channel of the axis: the recipe's, or else the scan's. */
+double tg_recipe_channel_zero(const tg_recipe *r, const tg_scan *scan);
+
 /** The grid that a recipe asks for on a scan (one slice per row). Refuses a field of no size. */
 tg_code tg_recipe_grid(const tg_recipe *r, const tg_scan *scan, tg_grid *grid, tg_error *e);
 

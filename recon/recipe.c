@@ -1,0 +1,46 @@
+#include "recon/recipe.h"
+
+#define RECIPE(key_, kind_, member, ...) \
+    { \
+        .key = key_, .kind = kind_, .at = offsetof(tg_recipe, member), __VA_ARGS__ \
+    }
+
+const tg_field tg_recipe_fields[] = {
+    RECIPE("method", TG_TEXT, method, .standard = "fbp", .what = "method of reconstruction"),
+    RECIPE("kernel", TG_TEXT, kernel, .standard = "hann",
+           .what = "window on the ramp: NAME, NAME@CUTOFF, or a file of fraction and value"),
+    RECIPE("pixels", TG_INTEGER, pixels, .standard = "512", .low = 1, .high = 16384, .what = "pixels along a side"),
+    RECIPE("field", TG_NUMBER, field_mm, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e6,
+           .what = "side of the square field; without it the scan's field of view"),
+    RECIPE("centre", TG_VECTOR2, centre_mm, .unit = "mm", .standard = "0, 0", .low = -1e6, .high = 1e6,
+           .what = "middle of the field"),
+    RECIPE("axis-channel", TG_NUMBER, axis_channel, .low = -1e6, .high = 1e6,
+           .what = "channel met by the ray through the axis, the first being 1; without it the scan's own"),
+    RECIPE("mu-water", TG_NUMBER, mu_water_per_mm, .unit = "1/mm", .low = TG_ABOVE_ZERO, .high = 1e6,
+           .what = "attenuation of water, makes HU; without it the scan's own"),
+    {0},
+};
+
+double tg_recipe_channel_zero(const tg_recipe *r, const tg_scan *scan)
+{
+    return r->axis_channel.line ? r->axis_channel.v - 1 : scan->channel_zero;
+}
+
+tg_code tg_recipe_grid(const tg_recipe *r, const tg_scan *scan, tg_grid *grid, tg_error *e)
+{
+    tg_scan seen = *scan;
+    seen.channel_zero = tg_recipe_channel_zero(r, scan);
+    const double field_mm = r->field_mm.v > 0 ? r->field_mm.v : 2 * tg_scan_field_radius_mm(&seen);
+    if (!(field_mm > 0))
+        return tg_fail(e, TG_INPUT, NULL, 0,
+                       "the axis meets channel %.6g of %zu, at the detector's rim: no field of view; give field or "
+                       "axis-channel",
+                       seen.channel_zero + 1, scan->channels);
+    *grid = tg_grid_square((size_t)r->pixels.v, field_mm, r->centre_mm.v);
+    grid->n[2] = scan->rows;
+    if (scan->row_step_mm > 0) {
+        grid->step_mm[2] = scan->row_step_mm;
+        grid->first_mm[2] = -scan->row_zero * scan->row_step_mm;
+    }
+    return TG_OK;
+}
