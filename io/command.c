@@ -115,18 +115,49 @@ static bool is_option(const tg_field *f)
     return f->kind != TG_GROUP && f->kind != TG_LIST && f->kind != TG_LINE;
 }
 
+/* The limits of a number, the words of a choice, the unit of a vector; "" where the placeholder says enough. */
+static const char *limits(const tg_field *f, char out[256])
+{
+    switch (f->kind) {
+    case TG_NUMBER: return tg_field_range(f, out) + strlen("a number");
+    case TG_INTEGER: return tg_field_range(f, out) + strlen("a whole number");
+    case TG_CHOICE: return tg_field_range(f, out);
+    case TG_VECTOR2:
+    case TG_VECTOR3: return f->unit ? f->unit : "";
+    default: return "";
+    }
+}
+
 static void print_option(const tg_field *f, const char *file)
 {
-    char label[96], range[256] = "", text[800];
+    char label[96], room[256], text[800];
+    const char *range = limits(f, room);
+    range += *range == ' ';
     const bool output = !strcmp(f->key, "output");
     snprintf(label, sizeof label, "%s--%s%s%s", output ? "-o, " : "", f->key, output ? " " : placeholder(f),
              output ? file : "");
-    if (f->kind == TG_NUMBER || f->kind == TG_INTEGER || f->kind == TG_CHOICE) tg_field_range(f, range);
-    if (f->kind == TG_VECTOR2 || f->kind == TG_VECTOR3) snprintf(range, sizeof range, "%s", f->unit ? f->unit : "");
     const bool standard = f->standard && f->kind != TG_SWITCH;
     snprintf(text, sizeof text, "%s%s%s%s%s%s", f->what, *range ? "; " : "", range, f->required ? "; required" : "",
              standard ? "; default " : "", standard ? f->standard : "");
     print_item(label, 26, text);
+}
+
+/* Command lines as a shell reads them, long ones broken with a backslash. */
+static void print_example(const char *text)
+{
+    int column = printf("  ");
+    while (*text) {
+        const int n = (int)strcspn(text, " \n");
+        if (column + n > WIDTH - 2) column = printf("\\\n      ") - 2;
+        column += printf("%.*s", n, text);
+        text += n;
+        if (*text == '\n')
+            column = printf("\n  ") - 1;
+        else if (*text)
+            column += printf(" ");
+        text += *text != '\0';
+    }
+    printf("\n");
 }
 
 static void print_help(const tg_command *c)
@@ -147,8 +178,7 @@ static void print_help(const tg_command *c)
     for (const tg_field *f = common_of(c); f->key; f++)
         print_option(f, c->output);
     printf("\nExample:\n");
-    for (const char *line = c->example; line; line = strchr(line, '\n') ? strchr(line, '\n') + 1 : NULL)
-        printf("  %.*s\n", (int)strcspn(line, "\n"), line);
+    print_example(c->example);
     printf("\n");
     wrap(0, 0, cautions);
 }

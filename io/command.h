@@ -20,7 +20,7 @@ typedef struct {
 typedef struct {
     const char *name;       /* "reconstruct" */
     const char *operands;   /* "SINO.fits" */
-    const char *what;       /* one sentence */
+    const char *what;       /* one sentence, without capital and full stop */
     const char *example;    /* one or two command lines that work on a fresh checkout */
     const tg_field *fields; /* options of its own, each a --key */
     size_t size;            /* of the struct that the fields fill */

@@ -57,7 +57,7 @@ static void append(char out[256], const char *format, ...)
     va_end(args);
 }
 
-static const double ENDLESS = 1e300; /* a limit that large is none */
+static const double ENDLESS = 1e300, MOST_WHOLE = 0x1p53; /* limits that large are none */
 
 static bool has_low(const tg_field *f)
 {
@@ -66,7 +66,7 @@ static bool has_low(const tg_field *f)
 
 static bool has_high(const tg_field *f)
 {
-    return (f->low != 0 || f->high != 0) && f->high < ENDLESS;
+    return (f->low != 0 || f->high != 0) && f->high < (f->kind == TG_INTEGER ? MOST_WHOLE : ENDLESS);
 }
 
 static bool in_range(const tg_field *f, double v)
@@ -212,7 +212,7 @@ static tg_code read_number(const place *p, const char *text, double *v)
     const double x = strtod(text, &stop);
     if (stop != end) return no_number(p, text, end); /* the process left the "C" locale */
     if (!isfinite(x)) return wrong(p, "'%s' is too large; write %s", tg_show(text).text, tg_field_range(f, range));
-    if (f->kind == TG_INTEGER && (x != floor(x) || fabs(x) > 0x1p53))
+    if (f->kind == TG_INTEGER && (x != floor(x) || fabs(x) > MOST_WHOLE))
         return wrong(p, "'%s' is not a whole number; write %s", tg_show(text).text, tg_field_range(f, range));
     if (!in_range(f, x)) return wrong(p, "%s is out of range; write %s", tg_show(text).text, tg_field_range(f, range));
     *v = x;
