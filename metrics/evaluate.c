@@ -84,7 +84,6 @@ static tg_code scale_by_solid(tg_image *image, const tg_phantom *phantom, const 
         variance += r->budget[i].u * r->budget[i].u;
     *water_u = sqrt(variance) / r->value;
     tg_to_hu(image, r->value);
-    image->facts.mu_water_per_mm = (tg_number){r->value, 1};
 done:
     tg_results_free(&found);
     tg_target_free(&target);
