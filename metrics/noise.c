@@ -294,7 +294,7 @@ tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e)
     TG_TRY(TG_NEW(made.autocorrelation, lags, e));
     double *c = made.autocorrelation;
     c[lags / 2] = 1;
-    if (!flat) goto done;
+    if (n < TG_LEAST_PIXELS) goto done;
 
     TG_TRY(TG_NEW(count, lags, e));
     TG_TRY(TG_NEW(modes, lags, e));
