@@ -4,6 +4,7 @@
 #include "io/memory.h"
 #include "io/output.h"
 #include "io/png.h"
+#include "io/table.h"
 #include "io/version.h"
 #include "metrics/display.h"
 #include "metrics/page.h"
@@ -244,7 +245,7 @@ tg_code tg_results_csv(const tg_evaluation *ev, char **text, tg_error *e)
     return take_text(out, text, e);
 }
 
-enum { COLUMNS = 80, INDENT = 4 };
+enum { COLUMNS = 80, INDENT = 2 };
 
 /** Words broken into lines of COLUMNS, indented. */
 static void put_wrapped(FILE *out, const char *text)
@@ -266,42 +267,60 @@ static void put_wrapped(FILE *out, const char *text)
     if (column) fputc('\n', out);
 }
 
-static void put_table_row(FILE *out, const tg_result *r)
+static tg_row row_of(const tg_result *r)
 {
     char value[TG_WORDS], u[TG_WORDS], limits[TG_WORDS];
+    tg_row row = {0};
     tg_words_value(r->value, r->uncertainty, value);
     tg_words_uncertainty(r->uncertainty, u);
     tg_words_limits(r->low, r->high, limits);
-    fprintf(out, "%-11s %-15s %8s +- %-6s %-5s", r->measure, r->where, value, u, r->unit);
-    if (r->verdict != TG_NO_LIMITS) fprintf(out, " %-13s %s", limits, tg_verdict_text(r->verdict));
-    fputc('\n', out);
-    put_wrapped(out, r->why);
-    put_wrapped(out, r->note);
+    tg_cell(row.cell[0], "%s", r->measure);
+    tg_cell(row.cell[1], "%s", r->where);
+    tg_cell(row.cell[2], isnan(r->value) ? "-" : "%s +- %s", value, u);
+    tg_cell(row.cell[3], "%s", r->unit);
+    if (r->verdict != TG_NO_LIMITS) tg_cell(row.cell[4], "%s", limits);
+    if (r->verdict != TG_NO_LIMITS) tg_cell(row.cell[5], "%s", tg_verdict_text(r->verdict));
+    return row;
 }
 
-static void put_item(FILE *out, const tg_evaluated *item)
+static void put_heading(FILE *out, const tg_evaluated *item)
 {
+    const tg_image *image = &item->image;
+    const bool judged = (item->specification && !item->unspecified) || *item->lost;
     fprintf(out, "\n%s", item->recipe->name.v);
-    if (item->image.method)
-        fprintf(out, " (%s%s%s)", item->image.method, item->image.kernel ? ", " : "",
-                item->image.kernel ? item->image.kernel : "");
-    if (item->specification && !item->unspecified)
-        fprintf(out, ": %s, by the specification '%s'", tg_verdict_text(item->verdict), item->specification);
-    else if (*item->lost)
-        fprintf(out, ": %s", tg_verdict_text(item->verdict));
+    if (image->method && image->kernel) fprintf(out, " (%s, %s)", image->method, image->kernel);
+    if (judged) fprintf(out, ": %s", tg_verdict_text(item->verdict));
+    if (item->specification && !item->unspecified) fprintf(out, ", by the specification '%s'", item->specification);
     fputc('\n', out);
+}
+
+static tg_code put_item(FILE *out, const tg_evaluated *item, tg_error *e)
+{
+    static const tg_row head = {{"measure", "where", "value +- U (95 %)", "unit", "specified", "verdict"}};
+    const tg_results *all = &item->results;
+    char words[512];
+    tg_row *row;
+    const tg_code code = TG_NEW(row, all->n_results, e);
+    if (code != TG_OK) return code;
+    put_heading(out, item);
     if (item->unspecified) {
-        char words[512];
         snprintf(words, sizeof words, "'%s' holds no specification for these conditions: %s", item->specification,
                  item->unspecified);
         put_wrapped(out, words);
     }
-    if (*item->lost) put_wrapped(out, item->lost);
-    if (item->results.n_results)
-        fprintf(out, "%-11s %-15s %8s +- %-6s %-5s %-13s %s\n", "measure", "where", "value", "U 95 %", "unit",
-                "specified", "verdict");
-    for (size_t i = 0; i < item->results.n_results; i++)
-        put_table_row(out, &item->results.result[i]);
+    put_wrapped(out, item->lost);
+    for (size_t i = 0; i < all->n_results; i++)
+        row[i] = row_of(&all->result[i]);
+    if (all->n_results) tg_table_print(out, &head, row, all->n_results);
+    tg_free(row);
+    for (size_t i = 0; i < all->n_results; i++) {
+        const tg_result *r = &all->result[i];
+        if (!*r->why && !*r->note) continue;
+        snprintf(words, sizeof words, "%s of %s: %s%s%s", r->measure, r->where, r->why, *r->why && *r->note ? "; " : "",
+                 r->note);
+        put_wrapped(out, words);
+    }
+    return TG_OK;
 }
 
 tg_code tg_results_text(const tg_evaluation *ev, char **text, tg_error *e)
@@ -312,9 +331,14 @@ tg_code tg_results_text(const tg_evaluation *ev, char **text, tg_error *e)
     if (!out) return tg_no_memory(e, 1, BUFSIZ);
     fprintf(out, "verdict: %s%s\n", tg_verdict_text(ev->verdict),
             ev->verdict == TG_NO_LIMITS ? " (nothing was judged)" : "");
-    for (size_t i = 0; i < ev->n; i++)
-        put_item(out, &ev->item[i]);
-    return take_text(out, text, e);
+    tg_code code = TG_OK;
+    for (size_t i = 0; i < ev->n && code == TG_OK; i++)
+        code = put_item(out, &ev->item[i], e);
+    const tg_code taken = take_text(out, text, e);
+    if (code == TG_OK) return taken;
+    tg_free(*text);
+    *text = NULL;
+    return code;
 }
 
 /* ---- the folder ---- */
