@@ -315,8 +315,9 @@ static tg_code put_image(FILE *out, const tg_evaluated *item, tg_error *e)
             g->n[1], g->step_mm[0], w.level - w.width / 2, w.level + w.width / 2, tg_unit_text(item->image.unit));
     if (g->n[2] > 1) fprintf(out, "; slice %zu of %zu", g->n[2] / 2 + 1, g->n[2]);
     if (!*item->lost) {
-        fprintf(out, "<br>phantom found %.2f mm to the right and %.2f mm up of its place", item->shift_mm[0],
-                item->shift_mm[1]);
+        fprintf(out, "<br>phantom found %.2f mm to the %s of its place and %.2f mm %s", fabs(item->shift_mm[0]),
+                item->shift_mm[0] < 0 ? "left" : "right", fabs(item->shift_mm[1]),
+                item->shift_mm[1] < 0 ? "below" : "above");
         if (item->turn_known) fprintf(out, ", turned by %.2f&deg;", item->turn_rad * 180 / M_PI);
     }
     fputs("</figcaption></figure>\n", out);

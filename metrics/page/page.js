@@ -39,7 +39,7 @@
             if (c.expected && c.expected.some((v) => v !== null))
                 datasets.push({
                     label: c.of + ", expected", data: xy(c.x, c.expected), borderColor: colour, borderDash: [1, 4],
-                    borderWidth: 1.5, pointRadius: 0, tension: 0,
+                    borderWidth: 1.5, pointStyle: "line", pointRadius: 0, tension: 0,
                 });
         });
         const names = axisTitles[measure] || ["", measure];
