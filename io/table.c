@@ -45,8 +45,8 @@ void tg_table_print(FILE *out, const tg_row *head, const tg_row *row, size_t n)
     for (int c = 0; c < TG_COLUMNS; c++)
         sum += width[c] ? width[c] + GAP : 0;
     for (; sum > PAGE; sum--) {
-        int widest = 0;
-        for (int c = 1; c < TG_COLUMNS; c++)
+        int widest = 1; /* the first column holds names: it stays whole */
+        for (int c = 2; c < TG_COLUMNS; c++)
             if (width[c] > width[widest]) widest = c;
         width[widest]--;
     }

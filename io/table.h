@@ -15,7 +15,7 @@ typedef struct {
 void tg_cell(char cell[TG_WORD], const char *format, ...) __attribute__((format(printf, 2, 3)));
 
 /** Print rows below a heading. A column without any text is left out; where the page is too narrow the widest columns
- *  shrink, and what they cannot hold ends in ~.  @param row  {n} */
+ *  but the first shrink, and what they cannot hold ends in ~.  @param row  {n} */
 void tg_table_print(FILE *out, const tg_row *head, const tg_row *row, size_t n);
 
 #endif
