@@ -2,16 +2,23 @@
 #define TG_THEORY_H
 #include "io/image.h"
 
-/** What the theory of filtered back-projection expects of an image, from its scan, facts and kernel alone.
- *  Answers NaN where the image does not say enough (another method, unknown scan, a kernel file that is not there). */
+/** What the theory of filtered back-projection with linear interpolation expects of an image, from its scan, facts and
+ *  kernel alone. Frequencies in 1/mm. Answers NaN where the image does not say enough: another method, an unknown scan,
+ *  a kernel file that is not there, HU without the water value. */
 
-/** MTF at a frequency [1/mm] on the axis: window, linear interpolation, aperture (Kak and Slaney 1988, ch. 3). */
+/** MTF on the axis, 1 at 0: window, interpolation, aperture, and the focal spot where it is known (Kak and Slaney 1988,
+ *  ch. 3). 0 above the Nyquist frequency; NaN when the aperture is unknown. */
 double tg_theory_mtf(const tg_image *image, double f_per_mm);
-/** Frequency where that falls to a level; NaN when it never does below the interpolation's first zero. */
+
+/** Frequency where that first falls to a level; NaN when it does not below the end of the window or Nyquist. */
 double tg_theory_mtf_frequency(const tg_image *image, double level);
-/** NPS of one slice [unit^2 mm^2] for a variance of line integrals (Kijewski and Judy 1987), without pixel aliasing. */
+
+/** NPS of one slice [unit^2 mm^2] for a variance of line integrals (Kijewski and Judy 1987): with the repetition of the
+ *  ramp above Nyquist that interpolation lets through, without pixel aliasing; for fans near the axis. */
 double tg_theory_nps(const tg_image *image, double line_variance, double f_per_mm);
-/** SD of one slice in the image's unit on the axis, for a variance of line integrals behind the object. */
+
+/** SD of one slice in the image's unit near the axis (ten channels off it or more), for a variance of line integrals
+ *  behind the object: the integral of that NPS (Chesler, Riederer and Pelc 1977). */
 double tg_theory_sd(const tg_image *image, double line_variance);
 
 #endif
