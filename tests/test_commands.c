@@ -1,0 +1,293 @@
+/* The program as its users meet it: exit statuses, messages, help. $TOMOGAUGE names it. */
+#include "io/version.h"
+#include "tests/near.h"
+
+#include <fcntl.h>
+#include <poll.h>
+#include <signal.h>
+#include <spawn.h>
+#include <stdbool.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <sys/stat.h>
+#include <sys/wait.h>
+#include <unistd.h>
+
+extern char **environ;
+
+static char program[4096], phantoms[4096], folder[] = "/tmp/tg_commands_XXXXXX";
+static char out[65536], err[65536]; /* what the last run printed */
+
+static void setup(void)
+{
+    const char *given = getenv("TOMOGAUGE");
+    ck_assert_msg(given && realpath(given, program), "TOMOGAUGE must name the program");
+    ck_assert_ptr_nonnull(realpath("phantoms", phantoms));
+    strcpy(folder + strlen(folder) - 6, "XXXXXX");
+    ck_assert_ptr_nonnull(mkdtemp(folder));
+    ck_assert_int_eq(chdir(folder), 0);
+}
+
+static void teardown(void)
+{
+    char command[100];
+    ck_assert_int_eq(chdir(phantoms), 0);
+    ck_assert_int_eq(chdir(".."), 0);
+    snprintf(command, sizeof command, "rm -rf %s", folder);
+    ck_assert_int_eq(system(command), 0);
+}
+
+static void slurp(const char *path, char *text, size_t size)
+{
+    FILE *f = fopen(path, "rb");
+    ck_assert_ptr_nonnull(f);
+    const size_t n = fread(text, 1, size - 1, f);
+    text[n] = '\0';
+    fclose(f);
+}
+
+/* Run the program through a shell in the folder of the test; `arguments` may redirect. */
+static int run(const char *arguments)
+{
+    char command[3 * 4096];
+    snprintf(command, sizeof command, "PHANTOMS=%s; { '%s' %s; } >out 2>err </dev/null", phantoms, program, arguments);
+    const int status = system(command);
+    ck_assert_msg(WIFEXITED(status), "%s did not exit", arguments);
+    slurp("out", out, sizeof out);
+    slurp("err", err, sizeof err);
+    return WEXITSTATUS(status);
+}
+
+static void write_text(const char *path, const char *text)
+{
+    FILE *f = fopen(path, "w");
+    ck_assert_ptr_nonnull(f);
+    fputs(text, f);
+    fclose(f);
+}
+
+static void assert_narrow(const char *text)
+{
+    for (const char *line = text; *line;) {
+        const int n = (int)strcspn(line, "\n");
+        ck_assert_msg(n <= 80, "%d columns: %.*s", n, n, line);
+        line += n + (line[n] == '\n');
+    }
+}
+
+/* Exactly this one line on standard error. */
+static void assert_message(const char *message)
+{
+    char want[1024];
+    snprintf(want, sizeof want, TG_PROGRAM ": %s\n", message);
+    ck_assert_str_eq(err, want);
+}
+
+START_TEST(help_of_the_program)
+{
+    ck_assert_int_eq(run("--help"), 0);
+    assert_narrow(out);
+    ck_assert_ptr_nonnull(strstr(out, "Usage: tomogauge COMMAND"));
+    ck_assert_ptr_nonnull(strstr(out, "Exit status:"));
+    ck_assert_ptr_nonnull(strstr(out, "Not for diagnosis."));
+    ck_assert_str_eq(err, "");
+    char help[sizeof out];
+    strcpy(help, out);
+    ck_assert_int_eq(run(""), 2); /* nothing was asked: a script should notice */
+    ck_assert_str_eq(out, help);
+    ck_assert_int_eq(run("--version"), 0);
+    ck_assert_str_eq(out, TG_PROGRAM " " TG_VERSION "\n");
+}
+END_TEST
+
+/* The names under "Commands:" in the help. @return how many */
+static int list_commands(char name[16][32])
+{
+    char help[sizeof out];
+    run("--help");
+    strcpy(help, out);
+    const char *from = strstr(help, "Commands:\n");
+    int n = 0;
+    for (from = strchr(from, '\n') + 1; *from != '\n'; from = strchr(from, '\n') + 1)
+        if (from[2] != ' ') ck_assert_int_eq(sscanf(from, " %31s", name[n++]), 1);
+    return n;
+}
+
+START_TEST(help_of_every_command)
+{
+    char name[16][32];
+    const int n = list_commands(name);
+    ck_assert_int_ge(n, 1);
+    for (int i = 0; i < n; i++) {
+        char arguments[600], usage[600];
+        snprintf(arguments, sizeof arguments, "%s --help", name[i]);
+        snprintf(usage, sizeof usage, "Usage: tomogauge %s ", name[i]);
+        ck_assert_int_eq(run(arguments), 0);
+        assert_narrow(out);
+        ck_assert_msg(strstr(out, usage) == out, "%s: %s", name[i], out);
+        ck_assert_ptr_nonnull(strstr(out, "--threads N"));
+        ck_assert_ptr_nonnull(strstr(out, "Example:\n  tomogauge "));
+        ck_assert_ptr_nonnull(strstr(out, "Not for diagnosis."));
+        ck_assert_str_eq(err, "");
+    }
+}
+END_TEST
+
+/* Wrong command lines: status 2 and one line that says what to do. */
+static const struct {
+    const char *arguments, *message;
+} misuse[] = {
+    {"simulat", "unknown command 'simulat'; did you mean 'simulate'?"},
+    {"xyzzy", "unknown command 'xyzzy'; 'tomogauge --help' lists them"},
+    {"simulate --photns 3", "unknown option '--photns'; did you mean '--photons'?"},
+    {"simulate --forc", "unknown option '--forc'; did you mean '--force'?"},
+    {"simulate --xyzzy=3", "unknown option '--xyzzy=3'; 'tomogauge simulate --help' lists them"},
+    {"simulate --photons", "--photons needs a value; 'tomogauge simulate --help' says which"},
+    {"simulate --check=3", "--check=3 takes no value"},
+    {"simulate --photons 8,5", "--photons: '8,5' is not a number; write 8.5"},
+    {"simulate --threads 0", "--threads: 0 is out of range; write a whole number from 1 to 1024"},
+    {"simulate --threads 1.5", "--threads: '1.5' is not a whole number; write a whole number from 1 to 1024"},
+    {"simulate a.yaml -o b", "simulate needs PHANTOM.yaml SCANNER.yaml; 'tomogauge simulate --help' shows an example"},
+    {"simulate a b c -o d", "'c' is one file too many; simulate takes PHANTOM.yaml SCANNER.yaml"},
+    {"simulate a b", "option -o is missing: say where the result goes, -o SINO.fits"},
+};
+
+START_TEST(a_wrong_command_line_ends_with_2)
+{
+    ck_assert_int_eq(run(misuse[_i].arguments), 2);
+    assert_message(misuse[_i].message);
+    ck_assert_str_eq(out, "");
+}
+END_TEST
+
+START_TEST(a_wrong_input_ends_with_3)
+{
+    write_text("p.yaml", "phantom: p\nmaterials:\n  - {name: water, mu: 0.02}\nsolids:\n"
+                         "  - {name: body, shape: cylindr, material: water, radius: 8 mm, length: 10}\n");
+    ck_assert_int_eq(run("simulate p.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
+    ck_assert_str_eq(err, "tomogauge: p.yaml:5: shape: 'cylindr' is not known; did you mean 'cylinder'?\n"
+                          "tomogauge: p.yaml:5: radius: '8 mm' is not a number; write 8, in mm\n");
+    ck_assert_int_ne(access("s.fits", F_OK), 0);
+    ck_assert_int_eq(run("simulate none.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
+    ck_assert_ptr_nonnull(strstr(err, "tomogauge: none.yaml: "));
+}
+END_TEST
+
+START_TEST(messages_are_plain_lines_and_counted)
+{
+    char text[4096] = "";
+    for (int i = 0; i < 30; i++)
+        snprintf(text + strlen(text), sizeof text - strlen(text), "\"\\e[2J\\n%d\": 1\n", i);
+    write_text("p.yaml", text);
+    ck_assert_int_eq(run("simulate p.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
+    int lines = 0;
+    for (const char *s = err; *s; s++) {
+        lines += *s == '\n';
+        ck_assert_msg(*s == '\n' || (unsigned char)*s >= ' ', "control character %d in a message", *s);
+    }
+    ck_assert_int_eq(lines, 21);
+    ck_assert_ptr_nonnull(strstr(err, "\ntomogauge: and "));
+}
+END_TEST
+
+START_TEST(what_cannot_be_printed_ends_with_4)
+{
+    ck_assert_int_eq(run("--help >/dev/full"), 4);
+    assert_message("cannot write to standard output: No space left on device");
+    ck_assert_int_eq(run("--help >&-"), 4);
+    ck_assert_int_eq(run("--version 2>&-"), 0);
+}
+END_TEST
+
+START_TEST(a_scan_is_simulated_and_nothing_foreign_is_replaced)
+{
+    write_text("scanner.yaml", "scanner: small\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 90\narc: 180\n");
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o s.fits --threads 2"), 0);
+    ck_assert_str_eq(err, ""); /* no bar where no terminal is */
+    ck_assert_int_eq(access("s.fits", F_OK), 0);
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o s.fits"), 0); /* its own file */
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o scanner.yaml"), 2);
+    write_text("mine.txt", "mine\n");
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o mine.txt"), 2);
+    char text[16];
+    slurp("mine.txt", text, sizeof text);
+    ck_assert_str_eq(text, "mine\n");
+    ck_assert_int_eq(run("simulate --force $PHANTOMS/water-disc.yaml scanner.yaml -o mine.txt"), 0);
+    ck_assert_int_eq(run("simulate --check $PHANTOMS/water-disc.yaml scanner.yaml"), 0);
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o none/s.fits"), 2);
+}
+END_TEST
+
+/* Start the program with a terminal as its standard error. @return the process; *terminal: our end */
+static pid_t start_on_terminal(char **argv, int *terminal)
+{
+    *terminal = posix_openpt(O_RDWR | O_NOCTTY);
+    ck_assert_int_ge(*terminal, 0);
+    ck_assert_int_eq(grantpt(*terminal), 0);
+    ck_assert_int_eq(unlockpt(*terminal), 0);
+    posix_spawn_file_actions_t actions;
+    posix_spawn_file_actions_init(&actions);
+    posix_spawn_file_actions_addopen(&actions, 2, ptsname(*terminal), O_RDWR | O_NOCTTY, 0);
+    pid_t child;
+    ck_assert_int_eq(posix_spawn(&child, program, &actions, NULL, argv, environ), 0);
+    posix_spawn_file_actions_destroy(&actions);
+    return child;
+}
+
+/* Wait until a terminal shows a text, at most 20 s. */
+static bool shows(int terminal, const char *text)
+{
+    size_t n = 0;
+    err[0] = '\0';
+    for (struct pollfd p = {.fd = terminal, .events = POLLIN}; poll(&p, 1, 20000) > 0;) {
+        const ssize_t got = read(terminal, err + n, sizeof err - 1 - n);
+        if (got <= 0) return false;
+        n += (size_t)got;
+        err[n] = '\0';
+        if (strstr(err, text)) return true;
+    }
+    return false;
+}
+
+START_TEST(an_interrupt_cleans_up_and_ends_as_interrupts_do)
+{
+    /* several minutes of work: it must be stopped */
+    write_text("scanner.yaml", "scanner: slow\ngeometry: parallel\nchannels: 1000\npitch: 0.25\nviews: 20000\n"
+                               "subrays: 101\n");
+    char phantom[8192];
+    snprintf(phantom, sizeof phantom, "%s/rods-disc.yaml", phantoms);
+    char *argv[] = {program,        (char[]){"simulate"}, phantom, (char[]){"scanner.yaml"},
+                    (char[]){"-o"}, (char[]){"s.fits"},   NULL};
+    static const int number[] = {SIGINT, SIGTERM};
+    for (int i = 0; i < 2; i++) {
+        int terminal, status;
+        const pid_t child = start_on_terminal(argv, &terminal);
+        const bool bar = shows(terminal, " %");
+        kill(child, number[i]);
+        while (bar && shows(terminal, "\r")) {
+        } /* until it closes its end */
+        ck_assert_int_eq(waitpid(child, &status, 0), child);
+        close(terminal);
+        ck_assert_msg(bar, "no progress within 20 s: %s", err);
+        ck_assert_msg(WIFSIGNALED(status) && WTERMSIG(status) == number[i], "status %d", status);
+        ck_assert_int_eq(run("--version; ls | grep -v -e out -e err -e scanner.yaml"), 1); /* nothing is left */
+    }
+}
+END_TEST
+
+Suite *suite_commands(void);
+Suite *suite_commands(void)
+{
+    SUITE_BEGIN("commands", 120);
+    tcase_add_checked_fixture(tcase, setup, teardown);
+    tcase_add_test(tcase, help_of_the_program);
+    tcase_add_test(tcase, help_of_every_command);
+    tcase_add_loop_test(tcase, a_wrong_command_line_ends_with_2, 0, sizeof misuse / sizeof *misuse);
+    tcase_add_test(tcase, a_wrong_input_ends_with_3);
+    tcase_add_test(tcase, messages_are_plain_lines_and_counted);
+    tcase_add_test(tcase, what_cannot_be_printed_ends_with_4);
+    tcase_add_test(tcase, a_scan_is_simulated_and_nothing_foreign_is_replaced);
+    tcase_add_test(tcase, an_interrupt_cleans_up_and_ends_as_interrupts_do);
+    return suite;
+}
