@@ -82,6 +82,11 @@ static bool cut_plane(double np, double nd, double t[2])
     return t[0] < t[1];
 }
 
+static double length2(const double a[3])
+{
+    return a[0] * a[0] + a[1] * a[1] + a[2] * a[2];
+}
+
 bool tg_solid_interval(const tg_solid *s, const double point_mm[3], const double direction[3], double t[2])
 {
     /* count from the point of the ray nearest to the solid's centre: a wire half a metre away keeps its digits */
@@ -90,6 +95,7 @@ bool tg_solid_interval(const tg_solid *s, const double point_mm[3], const double
         nearest -= (point_mm[i] - s->centre_mm[i]) * direction[i];
     for (int i = 0; i < 3; i++)
         world[i] = point_mm[i] - s->centre_mm[i] + nearest * direction[i];
+    if (length2(world) > length2(s->half_mm) * fmax(1, s->taper * s->taper)) return false; /* past the ball around it */
     to_own(s, world, p);
     to_own(s, direction, d);
     for (int i = 0; i < 3; i++) {
@@ -147,20 +153,15 @@ static void cross(const double a[3], const double b[3], double out[3])
         out[i] = a[(i + 1) % 3] * b[(i + 2) % 3] - a[(i + 2) % 3] * b[(i + 1) % 3];
 }
 
-static double length(const double a[3])
-{
-    return hypot(hypot(a[0], a[1]), a[2]);
-}
-
 void tg_solid_turn(tg_solid *s, const double axis[3], double turn_rad)
 {
-    const double n = length(axis), z[3] = {axis[0] / n, axis[1] / n, axis[2] / n};
+    const double n = sqrt(length2(axis)), z[3] = {axis[0] / n, axis[1] / n, axis[2] / n};
     double x[3], y[3];
     cross(z, (const double[3]){1, 0, 0}, y);
-    if (length(y) < 1e-12) { /* the axis is the world x: start from the world y */
+    if (length2(y) < 1e-24) { /* the axis is the world x: start from the world y */
         cross(z, (const double[3]){0, 1, 0}, y);
     }
-    const double m = length(y);
+    const double m = sqrt(length2(y));
     for (int i = 0; i < 3; i++)
         y[i] /= m;
     cross(y, z, x);
