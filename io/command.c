@@ -91,8 +91,11 @@ static void wrap(int column, int from, const char *text)
 /* A label and its text beside it from a column, or below where the label is long. */
 static void print_item(const char *label, int from, const char *text)
 {
-    printf("  %-*s", from - 2, label);
-    if ((int)strlen(label) > from - 4) printf("\n%*s", from, "");
+    const int column = printf("  %s", label);
+    if (column > from - 2)
+        printf("\n%*s", from, "");
+    else
+        printf("%*s", from - column, "");
     wrap(from, from, text);
 }
 
@@ -123,7 +126,7 @@ static const char *limits(const tg_field *f, char out[256])
     case TG_INTEGER: return tg_field_range(f, out) + strlen("a whole number");
     case TG_CHOICE: return tg_field_range(f, out);
     case TG_VECTOR2:
-    case TG_VECTOR3: return f->unit ? f->unit : "";
+    case TG_VECTOR3: snprintf(out, 256, f->unit ? "in %s" : "%s", f->unit ? f->unit : ""); return out;
     default: return "";
     }
 }
@@ -139,7 +142,7 @@ static void print_option(const tg_field *f, const char *file)
     const bool standard = f->standard && f->kind != TG_SWITCH;
     snprintf(text, sizeof text, "%s%s%s%s%s%s", f->what, *range ? "; " : "", range, f->required ? "; required" : "",
              standard ? "; default " : "", standard ? f->standard : "");
-    print_item(label, 26, text);
+    print_item(label, 28, text);
 }
 
 /* Command lines as a shell reads them, long ones broken with a backslash. */
