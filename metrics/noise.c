@@ -198,8 +198,7 @@ done:
 
 /* ---------------------------------------------------------------- learning */
 
-/** The pixels of the body that nothing but noise and a smooth trend distinguishes. */
-static tg_code uniform_pixels(const tg_target *t, size_t **index, size_t *n, tg_error *e)
+tg_code tg_noise_pixels(const tg_target *t, size_t **index, size_t *n, tg_error *e)
 {
     const size_t pixels = tg_grid_slice(&t->grid);
     tg_code code = TG_OK;
@@ -284,7 +283,7 @@ tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e)
     size_t *index = NULL, n;
     double *count = NULL, *modes = NULL, square;
     tg_noise made = {.sd = NAN, .from_slices = t->n > 1};
-    TG_TRY(uniform_pixels(t, &index, &n, e));
+    TG_TRY(tg_noise_pixels(t, &index, &n, e));
     const box b = box_around(index, n, t->grid.n[0]);
     /* flat up to the size of a body's regions, a tenth of its diameter; the table covers at most half of the pixels */
     const double wanted = fmax(0.11 * (double)(b.nx > b.ny ? b.nx : b.ny), 12), side = sqrt((double)n);

@@ -13,6 +13,10 @@
 tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e);
 void tg_noise_free(tg_noise *noise);
 
+/** The pixels of the body that only noise and a smooth trend tell apart: three spread widths from everything else and
+ *  within the limits of the file's pixel type.  @param index  {*n} flat indices into a slice, tg_free */
+tg_code tg_noise_pixels(const tg_target *t, size_t **index, size_t *n, tg_error *e);
+
 /** Variance of the line integrals through the rotation axis that the phantom and the image's photons let expect, mean
  *  over directions: exp(p) / N. NaN where the image does not tell energy and photons. */
 double tg_noise_line_variance(const tg_target *t);
