@@ -54,14 +54,16 @@ bool tg_fits_magic(const char *path)
     return check_magic(path, NULL) == TG_OK;
 }
 
-/* The data of the HDU must lie in the file before cfitsio is asked for them. */
+/* The data of the HDU, in whole blocks of 2880 bytes, must lie in the file before cfitsio is asked for them. */
 static tg_code check_length(tg_fits *f, size_t bytes)
 {
+    enum { BLOCK = 2880 };
     struct stat st;
     LONGLONG start, end;
     int status = 0;
     if (fits_get_hduaddrll(f->handle, NULL, &start, &end, &status)) return fail_status(f, status, "header");
     if (stat(f->path, &st)) return tg_fail(f->e, TG_INPUT, f->path, 0, "cannot open: %s", strerror(errno));
+    bytes = (bytes + BLOCK - 1) / BLOCK * BLOCK;
     if (start < 0 || st.st_size < start || (size_t)(st.st_size - start) < bytes)
         return tg_fail(f->e, TG_INPUT, f->path, 0,
                        "is cut short: its header announces %zu bytes of data, %lld are there; copy or export it again",
@@ -176,20 +178,20 @@ static tg_code check_sum(tg_fits *f)
 
 tg_code tg_fits_samples(tg_fits *f, float *v)
 {
-    int status = 0;
+    int status = 0, blanks;
     float none = NAN;
     const tg_code code = check_sum(f);
     if (code != TG_OK) return code;
     /* floats carry their own NaN; asking cfitsio to look for it would flush denormals to zero */
-    fits_read_img(f->handle, TFLOAT, 1, (LONGLONG)(f->n[0] * f->n[1] * f->n[2]), f->bitpix > 0 ? &none : NULL, v, NULL,
-                  &status);
+    fits_read_img(f->handle, TFLOAT, 1, (LONGLONG)(f->n[0] * f->n[1] * f->n[2]), f->bitpix > 0 ? &none : NULL, v,
+                  &blanks, &status);
     return status ? fail_status(f, status, "data") : TG_OK;
 }
 
 tg_code tg_fits_column(tg_fits *f, const char *name, size_t rows, double *v, char unit[TG_FITS_WORD])
 {
     tg_code code;
-    int status = 0, column, type = 0, kind = 0;
+    int status = 0, column, type = 0, kind = 0, blanks;
     LONGLONG have = 0, repeat = 0, width = 0, row_bytes = 0;
     char key[FLEN_KEYWORD];
     double none = NAN;
@@ -207,7 +209,7 @@ tg_code tg_fits_column(tg_fits *f, const char *name, size_t rows, double *v, cha
     if ((code = check_length(f, rows * (size_t)row_bytes)) != TG_OK || (code = check_sum(f)) != TG_OK) return code;
     fits_make_keyn("TUNIT", column, key, &status);
     if ((code = tg_fits_text(f, key, unit, TG_FITS_WORD)) != TG_OK) return code;
-    fits_read_col(f->handle, TDOUBLE, column, 1, 1, have, &none, v, NULL, &status);
+    fits_read_col(f->handle, TDOUBLE, column, 1, 1, have, &none, v, &blanks, &status);
     return status ? fail_status(f, status, name) : TG_OK;
 }
 

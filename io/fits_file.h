@@ -95,9 +95,10 @@ void tg_fits_put_facts(tg_fits *f, const tg_facts *facts);
  *  @param scan  views are set; angle_rad is allocated here */
 tg_code tg_fits_view_angles(tg_fits *f, double first_deg, double step_deg, tg_scan *scan);
 
-/** First angle and step as written to a file [deg]. @return false: irregular, by more than 1e-9 rad */
-bool tg_fits_regular(const tg_scan *scan, double *first_deg, double *step_deg);
-void tg_fits_put_angles(tg_fits *f, const tg_scan *scan); /* the table; the last thing to write */
+/** First angle and step as written to a file [deg]; ANGLES says where they differ by more than 1e-9 rad, and then the
+ *  table of angles follows as the last thing to write. */
+void tg_fits_put_regular(tg_fits *f, const tg_scan *scan, double *first_deg, double *step_deg);
+void tg_fits_put_angles(tg_fits *f, const tg_scan *scan);
 
 /** An angle in degrees with 15 digits: 0.05, not 0.050000000000000003. */
 double tg_fits_degrees(double rad);

@@ -158,8 +158,8 @@ static void put_scan(tg_fits *f, const tg_scan *scan)
                      (double)scan->rows,     scan->row_step_mm,  scan->row_zero + 1};
     if (!scan->channels) return;
     if (scan->geometry == TG_FAN_EQUIANGULAR) v.step = tg_fits_degrees(scan->channel_step);
-    tg_fits_regular(scan, &v.first, &v.view_step);
     tg_fits_put_source(f, scan);
+    tg_fits_put_regular(f, scan, &v.first, &v.view_step);
     for (size_t i = 0; i < SCAN_KEYS; i++)
         tg_fits_put_number(f, scan_keys[i].key, *(const double *)(const void *)((const char *)&v + scan_keys[i].at),
                            scan_keys[i].comment);

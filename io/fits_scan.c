@@ -87,7 +87,7 @@ double tg_fits_degrees(double rad)
     return strtod(text, NULL);
 }
 
-bool tg_fits_regular(const tg_scan *scan, double *first_deg, double *step_deg)
+static bool is_regular(const tg_scan *scan, double *first_deg, double *step_deg)
 {
     const double *a = scan->angle_rad;
     const size_t n = scan->views;
@@ -99,10 +99,15 @@ bool tg_fits_regular(const tg_scan *scan, double *first_deg, double *step_deg)
     return true;
 }
 
+void tg_fits_put_regular(tg_fits *f, const tg_scan *scan, double *first_deg, double *step_deg)
+{
+    if (!is_regular(scan, first_deg, step_deg)) tg_fits_put_text(f, "ANGLES", "irregular", "see the table ANGLES");
+}
+
 void tg_fits_put_angles(tg_fits *f, const tg_scan *scan)
 {
     double first, step, *degrees;
-    if (tg_fits_regular(scan, &first, &step)) return;
+    if (is_regular(scan, &first, &step)) return;
     if (TG_NEW(degrees, scan->views, f->e) != TG_OK) {
         f->code = TG_MACHINE;
         return;
@@ -119,7 +124,11 @@ tg_code tg_fits_view_angles(tg_fits *f, double first_deg, double step_deg, tg_sc
     char unit[TG_FITS_WORD];
     bool table;
     double *a = NULL, size = 1;
+    char expected[TG_FITS_WORD];
+    TG_TRY(tg_fits_text(f, "ANGLES", expected, sizeof expected));
     TG_TRY(tg_fits_extension(f, "ANGLES", &table));
+    if (expected[0] && !table)
+        TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "is cut short: its extension ANGLES is not there"));
     TG_TRY(TG_NEW(a, scan->views, f->e));
     if (table) {
         TG_TRY(tg_fits_column(f, "ANGLE", scan->views, a, unit));
@@ -353,8 +362,8 @@ tg_code tg_fits_write_sinogram(const char *path, const tg_sinogram *s, const tg_
     tg_fits f;
     const tg_code code = tg_fits_create(&f, path, stack ? 3 : 2, n, e);
     if (code != TG_OK) return code;
-    tg_fits_regular(scan, &view.value, &view.step);
     tg_fits_put_source(&f, scan);
+    tg_fits_put_regular(&f, scan, &view.value, &view.step);
     tg_fits_put_text(&f, "SCANDATA", "line-integral", NULL);
     tg_fits_put_axis(&f, 1, &channel);
     tg_fits_put_axis(&f, 2, &view);

@@ -1,6 +1,6 @@
 #ifndef TG_SCRATCH_H
 #define TG_SCRATCH_H
-/* A folder of a test's own, gone after it. */
+/** A folder for the files of one test; the tests of a suite run one after the other in one process. */
 #include <check.h>
 #include <dirent.h>
 #include <stdio.h>
@@ -8,50 +8,44 @@
 #include <string.h>
 #include <unistd.h>
 
-typedef struct {
-    char path[200]; /* of the folder */
-    char at[512];   /* of the file that was named last */
-} Scratch;
+static char scratch_folder[64];
 
-static inline void scratch_make(Scratch *s)
+static inline void scratch_begin(void)
 {
-    const char *base = getenv("TMPDIR");
-    snprintf(s->path, sizeof s->path, "%.150s/tomogauge-test-XXXXXX", base && *base ? base : "/tmp");
-    ck_assert_ptr_nonnull(mkdtemp(s->path));
+    strcpy(scratch_folder, "/tmp/tomogauge-test-XXXXXX");
+    ck_assert_ptr_nonnull(mkdtemp(scratch_folder));
 }
 
-/** The path of a name in the folder; good until the next call. */
-static inline const char *scratch_path(Scratch *s, const char *name)
+/** Path of a file in the folder; two are valid at a time. */
+static inline const char *scratch(const char *name)
 {
-    snprintf(s->at, sizeof s->at, "%s/%s", s->path, name);
-    return s->at;
+    static char path[2][384];
+    static int next;
+    next = !next;
+    snprintf(path[next], sizeof path[next], "%s/%s", scratch_folder, name);
+    return path[next];
 }
 
-static inline const char *scratch_write(Scratch *s, const char *name, const char *text)
+/** How many files stand there. */
+static inline size_t scratch_files(void)
 {
-    FILE *file = fopen(scratch_path(s, name), "w");
-    ck_assert_ptr_nonnull(file);
-    ck_assert_int_ge(fputs(text, file), 0);
-    ck_assert_int_eq(fclose(file), 0);
-    return s->at;
-}
-
-/** Remove the folder with its files and the folders in it. */
-static inline void scratch_remove(const char *path)
-{
-    DIR *folder = opendir(path);
-    if (!folder) {
-        remove(path);
-        return;
-    }
-    for (const struct dirent *d; (d = readdir(folder));) {
-        char inner[1024];
-        if (!strcmp(d->d_name, ".") || !strcmp(d->d_name, "..")) continue;
-        snprintf(inner, sizeof inner, "%s/%s", path, d->d_name);
-        scratch_remove(inner);
-    }
+    size_t n = 0;
+    DIR *folder = opendir(scratch_folder);
+    ck_assert_ptr_nonnull(folder);
+    for (const struct dirent *d; (d = readdir(folder));)
+        n += strcmp(d->d_name, ".") != 0 && strcmp(d->d_name, "..") != 0;
     closedir(folder);
-    rmdir(path);
+    return n;
+}
+
+static inline void scratch_end(void)
+{
+    DIR *folder = opendir(scratch_folder);
+    ck_assert_ptr_nonnull(folder);
+    for (const struct dirent *d; (d = readdir(folder));)
+        remove(scratch(d->d_name));
+    closedir(folder);
+    ck_assert_int_eq(rmdir(scratch_folder), 0);
 }
 
 #endif
