@@ -13,6 +13,7 @@
 #include <math.h>
 #include <omp.h>
 #include <stdio.h>
+#include <stdlib.h>
 #include <string.h>
 #include <sys/utsname.h>
 #include <time.h>
@@ -267,20 +268,54 @@ static void put_wrapped(FILE *out, const char *text)
     if (column) fputc('\n', out);
 }
 
+/** A limit that was computed has many digits; five are enough to read it by. */
+static double readable(double limit)
+{
+    char text[32];
+    snprintf(text, sizeof text, "%.5g", limit);
+    return strtod(text, NULL);
+}
+
 static tg_row row_of(const tg_result *r)
 {
     char value[TG_WORDS], u[TG_WORDS], limits[TG_WORDS];
     tg_row row = {0};
     tg_words_value(r->value, r->uncertainty, value);
     tg_words_uncertainty(r->uncertainty, u);
-    tg_words_limits(r->low, r->high, limits);
+    tg_words_limits(readable(r->low), readable(r->high), limits);
     tg_cell(row.cell[0], "%s", r->measure);
     tg_cell(row.cell[1], "%s", r->where);
-    tg_cell(row.cell[2], isnan(r->value) ? "-" : "%s +- %s", value, u);
-    tg_cell(row.cell[3], "%s", r->unit);
-    if (r->verdict != TG_NO_LIMITS) tg_cell(row.cell[4], "%s", limits);
-    if (r->verdict != TG_NO_LIMITS) tg_cell(row.cell[5], "%s", tg_verdict_text(r->verdict));
+    if (isnan(r->value))
+        tg_cell(row.cell[2], "-");
+    else
+        tg_cell(row.cell[2], "%s +- %s %s", value, u, r->unit);
+    if (r->verdict == TG_NO_LIMITS) return row;
+    tg_cell(row.cell[3], "%s", limits);
+    tg_cell(row.cell[4], "%s", tg_verdict_text(r->verdict));
     return row;
+}
+
+/** Does a table on the terminal show it? What was judged; where nothing was, all that could be had. */
+static bool shown(const tg_evaluated *item, const tg_result *r)
+{
+    const bool judged = item->specification && !item->unspecified;
+    return judged ? r->verdict != TG_NO_LIMITS : !isnan(r->value);
+}
+
+/** Names give way to figures: a table too wide for the terminal loses the ends of names, not of numbers. */
+static void shorten_names(const tg_row *head, tg_row *row, size_t n)
+{
+    enum { LEAST = 8, GAP = 2, CELLS = 5, NAME = 1 };
+    int room = COLUMNS - CELLS * GAP;
+    for (int c = 0; c < CELLS; c++) {
+        size_t width = strlen(head->cell[c]);
+        for (size_t i = 0; i < n; i++)
+            width = strlen(row[i].cell[c]) > width ? strlen(row[i].cell[c]) : width;
+        if (c != NAME) room -= (int)width;
+    }
+    room = room > LEAST ? room : LEAST;
+    for (size_t i = 0; i < n; i++)
+        if ((int)strlen(row[i].cell[NAME]) > room) snprintf(row[i].cell[NAME] + room - 1, 2, "~");
 }
 
 static void put_heading(FILE *out, const tg_evaluated *item)
@@ -294,32 +329,39 @@ static void put_heading(FILE *out, const tg_evaluated *item)
     fputc('\n', out);
 }
 
+static void put_note(FILE *out, const tg_result *r)
+{
+    char words[512];
+    if (!*r->why && !*r->note) return;
+    snprintf(words, sizeof words, "%s of %s: %s%s%s", r->measure, r->where, r->why, *r->why && *r->note ? "; " : "",
+             r->note);
+    put_wrapped(out, words);
+}
+
 static tg_code put_item(FILE *out, const tg_evaluated *item, tg_error *e)
 {
-    static const tg_row head = {{"measure", "where", "value +- U (95 %)", "unit", "specified", "verdict"}};
+    static const tg_row head = {{"measure", "where", "value +- U (95 %)", "specified", "verdict"}};
     const tg_results *all = &item->results;
-    char words[512];
     tg_row *row;
+    size_t n = 0;
     const tg_code code = TG_NEW(row, all->n_results, e);
     if (code != TG_OK) return code;
     put_heading(out, item);
     if (item->unspecified) {
+        char words[512];
         snprintf(words, sizeof words, "'%s' holds no specification for these conditions: %s", item->specification,
                  item->unspecified);
         put_wrapped(out, words);
     }
     put_wrapped(out, item->lost);
     for (size_t i = 0; i < all->n_results; i++)
-        row[i] = row_of(&all->result[i]);
-    if (all->n_results) tg_table_print(out, &head, row, all->n_results);
+        if (shown(item, &all->result[i])) row[n++] = row_of(&all->result[i]);
+    shorten_names(&head, row, n);
+    if (n) tg_table_print(out, &head, row, n);
     tg_free(row);
-    for (size_t i = 0; i < all->n_results; i++) {
-        const tg_result *r = &all->result[i];
-        if (!*r->why && !*r->note) continue;
-        snprintf(words, sizeof words, "%s of %s: %s%s%s", r->measure, r->where, r->why, *r->why && *r->note ? "; " : "",
-                 r->note);
-        put_wrapped(out, words);
-    }
+    for (size_t i = 0; i < all->n_results; i++)
+        if (shown(item, &all->result[i])) put_note(out, &all->result[i]);
+    if (n < all->n_results) fprintf(out, "%*sand %zu more in the results\n", INDENT, "", all->n_results - n);
     return TG_OK;
 }
 
