@@ -248,7 +248,7 @@ static void stop(int number)
 /* A second interrupt does not wait for the clean-up. What was ignored from the start stays ignored. */
 static void catch_interrupts(void)
 {
-    static const int numbers[] = {SIGINT, SIGTERM};
+    static const int numbers[] = {SIGINT, SIGTERM, SIGHUP};
     for (size_t i = 0; i < sizeof numbers / sizeof *numbers; i++) {
         struct sigaction old, catching = {.sa_handler = stop, .sa_flags = SA_RESTART | (int)SA_RESETHAND};
         sigemptyset(&catching.sa_mask);
