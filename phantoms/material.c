@@ -10,37 +10,40 @@
 #include <strings.h>
 #include <xraylib.h>
 
-enum { MOST_FORMULA = 200 }; /* characters */
+enum { MOST_Z = 98, MOST_DEPTH = 20 }; /* attenuation is known up to californium */
+#define MOST_ATOMS 1e6
 
-/** The first character that cannot stand where it does, or NULL: xraylib's parser leaks when it fails, so it is shown
- *  only formulas that it can read. */
-static const char *formula_fault(const char *formula)
+/** Add up the atoms of a formula or of a bracket in it: xraylib has a parser too, but it leaks.
+ *  @param c      moves behind what was read, or to what cannot stand where it does
+ *  @param atoms  {MOST_Z + 1} by atomic number, raised */
+static bool read_atoms(const char **c, int depth, double *atoms)
 {
-    int depth = 0;
-    bool counted = false; /* an element or group stands before, which a number or a closing bracket may follow */
-    const char *c = formula;
-    while (*c && c - formula < MOST_FORMULA) {
-        const char symbol[3] = {c[0], islower((unsigned char)c[1]) ? c[1] : '\0', '\0'};
-        if (*c == '(') {
-            depth++;
-            c++;
-            counted = false;
-        } else if (*c == ')' && counted && depth > 0) {
-            depth--;
-            c++;
-        } else if (isdigit((unsigned char)*c) && counted) {
-            const char *behind = c + strspn(c, "0123456789.");
-            char *end;
-            if (!(strtod(c, &end) > 0) || end != behind || behind[-1] == '.') return c;
-            c = behind;
-        } else if (SymbolToAtomicNumber(symbol, NULL)) {
-            c += strlen(symbol);
-            counted = true;
+    const char *first = *c;
+    while (**c && **c != ')') {
+        const char symbol[3] = {**c, islower((unsigned char)(*c)[1]) ? (*c)[1] : '\0', '\0'};
+        const int element = SymbolToAtomicNumber(symbol, NULL);
+        double group[MOST_Z + 1] = {0}, times = 1;
+        if (element > 0 && element <= MOST_Z) {
+            group[element] = 1;
+            *c += strlen(symbol);
+        } else if (**c == '(' && depth < MOST_DEPTH) {
+            ++*c;
+            if (!read_atoms(c, depth + 1, group) || **c != ')') return false;
+            ++*c;
         } else {
-            return c;
+            return false;
         }
+        if (isdigit((unsigned char)**c)) {
+            const char *behind = *c + strspn(*c, "0123456789.");
+            char *end;
+            times = strtod(*c, &end);
+            if (!(times > 0 && times <= MOST_ATOMS) || end != behind || behind[-1] == '.') return false;
+            *c = behind;
+        }
+        for (int z = 1; z <= MOST_Z; z++)
+            atoms[z] += times * group[z];
     }
-    return *c || depth || !counted ? c : NULL;
+    return *c > first;
 }
 
 /** Take a composition over. */
@@ -63,16 +66,22 @@ done:
 tg_code tg_material_formula(const char *formula, double density_g_cm3, const char *file, int line, tg_material *m,
                             tg_error *e)
 {
-    const char *fault = formula_fault(formula);
-    if (fault)
+    double atoms[MOST_Z + 1] = {0}, fraction[MOST_Z], total = 0;
+    int z[MOST_Z], n = 0;
+    const char *c = formula;
+    if (!read_atoms(&c, 0, atoms) || *c)
         return tg_fail(e, TG_INPUT, file, line,
-                       "formula: '%.60s' cannot be read %s%.20s; write elements and numbers, as in C2F4 or Ca5(PO4)3OH",
-                       formula, *fault ? "from " : "to its end", fault);
-    struct compoundData *c = CompoundParser(formula, NULL);
-    if (!c) return tg_fail(e, TG_INPUT, file, line, "formula: '%.60s' is not understood", formula);
-    const tg_code code = compose(c->nElements, c->Elements, c->massFractions, density_g_cm3, m, e);
-    FreeCompoundData(c);
-    return code;
+                       "formula: '%s' cannot be read %s%s; write elements and numbers, as in C2F4 or Ca5(PO4)3OH",
+                       tg_show(formula).text, *c ? "from " : "to its end", tg_show(c).text);
+    for (int i = 1; i <= MOST_Z; i++)
+        if (atoms[i] > 0) {
+            z[n] = i;
+            fraction[n] = atoms[i] * AtomicWeight(i, NULL);
+            total += fraction[n++];
+        }
+    for (int i = 0; i < n; i++)
+        fraction[i] /= total;
+    return compose(n, z, fraction, density_g_cm3, m, e);
 }
 
 /** A name of the list that the user may have meant: one that starts alike, or one that is spelt nearly so. */
@@ -110,7 +119,7 @@ tg_code tg_material_compound(const char *compound, double density_g_cm3, const c
     if (code == TG_OK && at == n) {
         char near[64];
         const bool found = *compound && nearest_compound(compound, list, n, near);
-        code = tg_fail(e, TG_INPUT, file, line, "compound: '%.60s' is not in the NIST list%s%s%s", compound,
+        code = tg_fail(e, TG_INPUT, file, line, "compound: '%s' is not in the NIST list%s%s%s", tg_show(compound).text,
                        found ? "; did you mean '" : "; give its formula and density instead", found ? near : "",
                        found ? "'?" : "");
     } else if (code == TG_OK) {

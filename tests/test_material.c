@@ -217,10 +217,17 @@ END_TEST
 
 START_TEST(refusals)
 {
-    static const char *bad[] = {
-        "",     "c",   "Xx2",    "C2F4)", "(C2F4",  "C()",  "C0",
-        "2C",   "C2.", "C2.5.1", "C-1",   "C 2",    "(2C)", "C1e3",
-        "C0x1", "()",  "H2O\n",  "C\xc3", "((C)))", "C,H",  "C9999999999999999999999999999999999999x"};
+    static const char *bad[] = {"",       "c",
+                                "Xx2",    "Es",
+                                "C2F4)",  "(C2F4",
+                                "C()",    "C0",
+                                "2C",     "C2.",
+                                "C2.5.1", "C-1",
+                                "C 2",    "(2C)",
+                                "C1e3",   "C0x1",
+                                "()",     "H2O\n",
+                                "C\xc3",  "((C)))",
+                                "C,H",    "C9999999999999999999999999999999999999x"};
     for (size_t i = 0; i < sizeof bad / sizeof *bad; i++) {
         tg_error e = {0};
         tg_material m = {0};

@@ -55,7 +55,7 @@ def main():
         for seed, mean in enumerate(MEANS):
             photons = mean * np.exp(2.0)  # 100 mm of 0.02 per mm
             subprocess.run([os.environ["TOMOGAUGE"], "simulate", phantom, scanner, "-o", sino, "--quiet", "--photons",
-                            f"{photons:.12g}", "--seed", str(seed)], check=True)
+                            f"{photons:.12g}", "--seed", str(seed)], check=True, stdout=subprocess.DEVNULL)
             counts = photons * np.exp(-fits.getdata(sino).astype(float).ravel())
             whole = np.where(np.abs(counts - 0.5) < 1e-3, 0, np.round(counts))  # no photon is written as half a photon
             p = chance(whole, mean)

@@ -113,7 +113,8 @@ def main():
         with open(scanner, "w", encoding="utf-8") as f:
             f.write(f"scanner: points\ngeometry: parallel\nchannels: {CHANNELS}\npitch: {PITCH}\nviews: {VIEWS}\n"
                     "start: 3\naperture: 0\nslices: 2\nslice-pitch: 15\n")
-        subprocess.run([os.environ["TOMOGAUGE"], "simulate", phantom, scanner, "-o", sino, "--quiet"], check=True)
+        subprocess.run([os.environ["TOMOGAUGE"], "simulate", phantom, scanner, "-o", sino], check=True,
+                       stdout=subprocess.DEVNULL)
         got = fits.getdata(sino).astype(float)
     known = [(np.array(s["centre"]), convex(s), MU[int(s["material"][1:])]) for s in solids]
     worst, rays = 0.0, 0
