@@ -463,6 +463,7 @@ int tg_program(const tg_command *const *commands, int argc, char **argv)
     bool quiet = false;
     const char *name = argc > 1 ? argv[1] : NULL;
     open_standard_streams();
+    setvbuf(stdout, NULL, _IOFBF, 1 << 16); /* results follow when the progress bar has gone */
     tg_process_start();
     catch_interrupts();
     const tg_command *const *c = commands;
@@ -478,8 +479,9 @@ int tg_program(const tg_command *const *commands, int argc, char **argv)
     } else {
         code = run(*c, argc - 1, (const char **)(void *)(argv + 1), &quiet, &e);
     }
+    errno = 0;
     if (fflush(stdout) || ferror(stdout))
-        code = tg_fail(&e, TG_MACHINE, NULL, 0, "cannot write to standard output: %s", strerror(errno));
+        code = tg_fail(&e, TG_MACHINE, NULL, 0, "cannot write to standard output: %s", strerror(errno ? errno : EIO));
     print_messages(&e, quiet);
     if (stopped) { /* end as interrupts do: the shell must see it */
         signal(stopped, SIG_DFL);
