@@ -38,14 +38,34 @@ static inline size_t scratch_files(void)
     return n;
 }
 
+/** A file with this text. @return its path */
+static inline const char *scratch_write(const char *name, const char *text)
+{
+    const char *path = scratch(name);
+    FILE *file = fopen(path, "w");
+    ck_assert_ptr_nonnull(file);
+    ck_assert_int_ge(fputs(text, file), 0);
+    ck_assert_int_eq(fclose(file), 0);
+    return path;
+}
+
+/** Remove a file, or a folder with all in it. */
+static inline void scratch_remove(const char *path)
+{
+    DIR *folder = opendir(path);
+    for (const struct dirent *d; folder && (d = readdir(folder));) {
+        char inner[512];
+        if (!strcmp(d->d_name, ".") || !strcmp(d->d_name, "..")) continue;
+        snprintf(inner, sizeof inner, "%.250s/%s", path, d->d_name);
+        scratch_remove(inner);
+    }
+    if (folder) closedir(folder);
+    ck_assert_int_eq(remove(path), 0);
+}
+
 static inline void scratch_end(void)
 {
-    DIR *folder = opendir(scratch_folder);
-    ck_assert_ptr_nonnull(folder);
-    for (const struct dirent *d; (d = readdir(folder));)
-        remove(scratch(d->d_name));
-    closedir(folder);
-    ck_assert_int_eq(rmdir(scratch_folder), 0);
+    scratch_remove(scratch_folder);
 }
 
 #endif

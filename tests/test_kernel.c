@@ -75,9 +75,8 @@ END_TEST
 
 START_TEST(file)
 {
-    Scratch scratch;
-    scratch_make(&scratch);
-    tg_kernel k = open(scratch_write(&scratch, "k@2.txt", "# a window\n\n0 1 # flat first\r\n\t0.5  1\n1.5e0 -0.5\n"));
+    scratch_begin();
+    tg_kernel k = open(scratch_write("k@2.txt", "# a window\n\n0 1 # flat first\r\n\t0.5  1\n1.5e0 -0.5\n"));
     ck_assert_uint_eq(k.n, 3);
     CK_NEAR(tg_kernel_response(&k, 0.3), 1, 1e-15, 0, "first rows");
     CK_NEAR(tg_kernel_response(&k, 0.5), 1, 1e-15, 0, "on a row");
@@ -86,7 +85,7 @@ START_TEST(file)
     ck_assert(tg_kernel_response(&k, 1.500001) == 0 && tg_kernel_end(&k) == 1.5);
     tg_kernel_free(&k);
     tg_kernel_free(&k);
-    scratch_remove(scratch.path);
+    scratch_end();
 }
 END_TEST
 
@@ -108,17 +107,16 @@ static const struct {
 
 START_TEST(wrong_file)
 {
-    Scratch scratch;
     tg_error e = {0};
     tg_kernel k = {0};
-    scratch_make(&scratch);
-    const char *path = scratch_write(&scratch, "kernel.txt", wrong_files[_i].text);
+    scratch_begin();
+    const char *path = scratch_write("kernel.txt", wrong_files[_i].text);
     ck_assert_int_eq(tg_kernel_read(path, &k, &e), TG_INPUT);
     ck_assert_str_eq(e.message[0].file, path);
     ck_assert_int_eq(e.message[0].line, wrong_files[_i].line);
     ck_assert_msg(strstr(e.message[0].what, wrong_files[_i].says), "%s", e.message[0].what);
     ck_assert(!k.text && !k.value);
-    scratch_remove(scratch.path);
+    scratch_end();
 }
 END_TEST
 
