@@ -1,6 +1,7 @@
 /* The program as its users meet it: exit statuses, messages, help. $TOMOGAUGE names it. */
 #include "io/version.h"
 #include "tests/near.h"
+#include "tests/scratch.h"
 
 #include <fcntl.h>
 #include <poll.h>
@@ -16,7 +17,7 @@
 
 extern char **environ;
 
-static char program[4096], phantoms[4096], folder[] = "/tmp/tg_commands_XXXXXX";
+static char program[4096], phantoms[4096];
 static char out[65536], err[65536]; /* what the last run printed */
 
 static void setup(void)
@@ -24,18 +25,15 @@ static void setup(void)
     const char *given = getenv("TOMOGAUGE");
     ck_assert_msg(given && realpath(given, program), "TOMOGAUGE must name the program");
     ck_assert_ptr_nonnull(realpath("phantoms", phantoms));
-    strcpy(folder + strlen(folder) - 6, "XXXXXX");
-    ck_assert_ptr_nonnull(mkdtemp(folder));
-    ck_assert_int_eq(chdir(folder), 0);
+    scratch_begin();
+    ck_assert_int_eq(chdir(scratch_folder), 0);
 }
 
 static void teardown(void)
 {
-    char command[100];
     ck_assert_int_eq(chdir(phantoms), 0);
     ck_assert_int_eq(chdir(".."), 0);
-    snprintf(command, sizeof command, "rm -rf %s", folder);
-    ck_assert_int_eq(system(command), 0);
+    scratch_end();
 }
 
 static void slurp(const char *path, char *text, size_t size)
@@ -57,14 +55,6 @@ static int run(const char *arguments)
     slurp("out", out, sizeof out);
     slurp("err", err, sizeof err);
     return WEXITSTATUS(status);
-}
-
-static void write_text(const char *path, const char *text)
-{
-    FILE *f = fopen(path, "w");
-    ck_assert_ptr_nonnull(f);
-    fputs(text, f);
-    fclose(f);
 }
 
 static void assert_narrow(const char *text)
@@ -163,8 +153,8 @@ END_TEST
 
 START_TEST(a_wrong_input_ends_with_3)
 {
-    write_text("p.yaml", "phantom: p\nmaterials:\n  - {name: water, mu: 0.02}\nsolids:\n"
-                         "  - {name: body, shape: cylindr, material: water, radius: 8 mm, length: 10}\n");
+    scratch_write("p.yaml", "phantom: p\nmaterials:\n  - {name: water, mu: 0.02}\nsolids:\n"
+                            "  - {name: body, shape: cylindr, material: water, radius: 8 mm, length: 10}\n");
     ck_assert_int_eq(run("simulate p.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
     ck_assert_str_eq(err, "tomogauge: p.yaml:5: shape: 'cylindr' is not known; did you mean 'cylinder'?\n"
                           "tomogauge: p.yaml:5: radius: '8 mm' is not a number; write 8, in mm\n");
@@ -179,7 +169,7 @@ START_TEST(messages_are_plain_lines_and_counted)
     char text[4096] = "";
     for (int i = 0; i < 30; i++)
         snprintf(text + strlen(text), sizeof text - strlen(text), "\"\\e[2J\\n%d\": 1\n", i);
-    write_text("p.yaml", text);
+    scratch_write("p.yaml", text);
     ck_assert_int_eq(run("simulate p.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
     int lines = 0;
     for (const char *s = err; *s; s++) {
@@ -202,13 +192,13 @@ END_TEST
 
 START_TEST(a_scan_is_simulated_and_nothing_foreign_is_replaced)
 {
-    write_text("scanner.yaml", "scanner: small\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 90\narc: 180\n");
+    scratch_write("scanner.yaml", "scanner: small\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 90\narc: 180\n");
     ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o s.fits --threads 2"), 0);
     ck_assert_str_eq(err, ""); /* no bar where no terminal is */
     ck_assert_int_eq(access("s.fits", F_OK), 0);
     ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o s.fits"), 0); /* its own file */
     ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o scanner.yaml"), 2);
-    write_text("mine.txt", "mine\n");
+    scratch_write("mine.txt", "mine\n");
     ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o mine.txt"), 2);
     char text[16];
     slurp("mine.txt", text, sizeof text);
@@ -253,8 +243,8 @@ static bool shows(int terminal, const char *text)
 START_TEST(an_interrupt_cleans_up_and_ends_as_interrupts_do)
 {
     /* a minute of work: it must be stopped */
-    write_text("scanner.yaml", "scanner: slow\ngeometry: parallel\nchannels: 500\npitch: 0.5\nviews: 20000\n"
-                               "subrays: 25\n");
+    scratch_write("scanner.yaml", "scanner: slow\ngeometry: parallel\nchannels: 500\npitch: 0.5\nviews: 20000\n"
+                                  "subrays: 25\n");
     char phantom[8192];
     snprintf(phantom, sizeof phantom, "%s/rods-disc.yaml", phantoms);
     char *argv[] = {program,        (char[]){"simulate"}, phantom, (char[]){"scanner.yaml"},
@@ -271,7 +261,7 @@ START_TEST(an_interrupt_cleans_up_and_ends_as_interrupts_do)
         close(terminal);
         ck_assert_msg(bar, "no progress within 20 s: %s", err);
         ck_assert_msg(WIFSIGNALED(status) && WTERMSIG(status) == number[i], "status %d", status);
-        ck_assert_int_eq(run("--version; ls | grep -v -e out -e err -e scanner.yaml"), 1); /* nothing is left */
+        ck_assert_uint_eq(scratch_files(), 1); /* the scanner: nothing is left */
     }
 }
 END_TEST

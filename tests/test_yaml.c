@@ -1,11 +1,11 @@
 #include "io/yaml.h"
 
 #include "tests/near.h"
+#include "tests/scratch.h"
 
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-#include <unistd.h>
 
 typedef struct {
     tg_text name;
@@ -256,19 +256,15 @@ END_TEST
 
 START_TEST(a_file_is_read)
 {
-    char path[] = "/tmp/tg_yaml_XXXXXX";
-    const int fd = mkstemp(path);
-    ck_assert_int_ge(fd, 0);
-    FILE *f = fdopen(fd, "w");
-    ck_assert_ptr_nonnull(f);
-    fputs("thing: a\nscan: s.fits\nparts: [{name: b}]\n", f);
-    fclose(f);
+    scratch_begin();
+    const char *path = scratch_write("t.yaml", "thing: a\nscan: s.fits\nparts: [{name: b}]\n");
     CK_OK(tg_yaml_read(path, fields, &t, &e));
-    ck_assert_str_eq(t.scan.v, "/tmp/s.fits");
+    ck_assert_str_eq(t.scan.v, scratch("s.fits"));
     tg_fields_free(fields, &t);
-    unlink(path);
+    ck_assert_int_eq(remove(path), 0);
     ck_assert_int_eq(tg_yaml_read(path, fields, &t, &e), TG_INPUT);
     ck_assert_str_eq(e.message[0].file, path);
+    scratch_end();
 }
 END_TEST
 
