@@ -99,15 +99,17 @@ done:
     return code;
 }
 
-/** Squares over the correlation of what two windows see, one moved against the other: (sum w w' / sum w^2)^2. */
+/** Correlation of what two squares tell of a sum over many rings, one moved against the other along one axis:
+ *  sum w^2 w'^2 / sum w^4 (for a single frequency it is (sum w w' / sum w^2)^2, Welch 1967; a sum over frequencies also
+ *  has the leakage of each into its neighbours in common). */
 static double overlap(const double *w, size_t side, size_t lag)
 {
     double sum = 0, all = 0;
     for (size_t i = 0; i < side; i++) {
-        all += w[i] * w[i];
-        if (i + lag < side) sum += w[i] * w[i + lag];
+        all += pow(w[i], 4);
+        if (i + lag < side) sum += w[i] * w[i] * w[i + lag] * w[i + lag];
     }
-    return sum * sum / (all * all);
+    return sum / all;
 }
 
 /** Periodogram of every square and slice, averaged over rings. @param taper  {side} */
@@ -164,8 +166,8 @@ static tg_code analyse(const tg_target *t, const size_t *index, size_t n, const 
     for (size_t i = 0; i < s->bins; i++)
         s->f[i] /= count[i];
 
-    /* mean of n squares: its variance is that of one times sum_ij rho_ij / n^2 (Welch 1967); slices minus their mean
-     * are worth one slice less */
+    /* mean of n squares: its variance is that of one times sum_ij rho_ij / n^2; slices minus their mean are
+     * worth one slice less */
     double pairs = 0;
     for (size_t i = 0; i < s->n; i++)
         for (size_t j = 0; j < s->n; j++) {
@@ -298,16 +300,24 @@ static double parabola_peak(const spectrum *s, size_t a, size_t b, double *slope
     return fabs(x) <= 1 ? middle + half * x : (double)NAN;
 }
 
-/** Rings around the peak whose power is at least seven tenths of it. False: no peak, the power falls to one side only.
- */
+/** Mean of a ring and its neighbours: single rings of a flat spectrum look like peaks. */
+static double smoothed(const spectrum *s, size_t k)
+{
+    const size_t low = k ? k - 1 : 0, high = k + 1 < s->bins ? k + 1 : k;
+    return (s->s[low] + s->s[k] + s->s[high]) / 3;
+}
+
+/** Rings around the peak whose power is at least seven tenths of it. False: it falls to one side only, or to none. */
 static bool peak_rings(const spectrum *s, size_t *a, size_t *b)
 {
-    const size_t peak = largest(s->s, s->bins);
-    const double level = 0.7 * s->s[peak];
+    size_t peak = 0;
+    for (size_t k = 1; k < s->bins; k++)
+        if (smoothed(s, k) > smoothed(s, peak)) peak = k;
+    const double level = 0.7 * smoothed(s, peak);
     *a = *b = peak;
-    while (*a > 0 && s->s[*a - 1] >= level)
+    while (*a > 0 && smoothed(s, *a - 1) >= level)
         --*a;
-    while (*b < s->bins && s->s[*b] >= level)
+    while (*b < s->bins && smoothed(s, *b) >= level)
         ++*b;
     if (*a == 0 || *b == s->bins) return false;
     while (*b - *a < 5) { /* a parabola needs some rings to be told from noise */
