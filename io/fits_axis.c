@@ -17,6 +17,8 @@ double tg_fits_unit_size(const tg_fits_unit *units, const char *name)
 }
 
 enum { KEY = 16 };
+#define LEAST 1e-9
+#define MOST 1e9 /* bounds of what an axis may hold, in any unit */
 
 static const char *key_of(char key[KEY], const char *stem, int number)
 {
@@ -57,7 +59,10 @@ tg_code tg_fits_axis_of(tg_fits *f, int number, tg_fits_axis *axis)
     if (axis->step_is && isnan(step))
         TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "%s is missing; write the %s in %s", key, axis->step_is,
                        axis->units->name));
-    if (step == 0) TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "%s is 0", key));
+    if (!isnan(step) && !(fabs(step) >= LEAST && fabs(step) <= MOST))
+        TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "%s = %g is no step of an axis", key, step));
+    if (fabs(pixel) > MOST || fabs(value) > MOST)
+        TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "CRPIX%d or CRVAL%d lies far off the axis", number, number));
     if (missing[0])
         tg_warn(f->e, f->path, 0, "%smissing: axis %d is taken as %s in %s, pixel %.9g as its reference", missing,
                 number, axis->type, axis->units->name, pixel);

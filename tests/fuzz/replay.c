@@ -30,5 +30,6 @@ int main(int argc, char **argv)
     tg_process_start();
     for (int i = 1; i < argc; i++)
         good &= replay(argv[i]);
+    printf("%d inputs replayed\n", argc - 1);
     return good && argc > 1 ? EXIT_SUCCESS : EXIT_FAILURE;
 }
