@@ -194,7 +194,7 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
                           least_radius, width);
             goto done;
         }
-        const double reach = fmin(most_reach * width, radius_mm), outer = 2 * (radius_mm + reach + 2 * width);
+        const double reach = fmin(most_reach * width, 0.9 * radius_mm), outer = 2 * (radius_mm + reach + 2 * width);
         const double inner = 2 * fmax(0, radius_mm - reach - 2 * width) / sqrt(2);
         tg_spread_free(&s);
         TG_TRY(tg_spread_create((size_t)((outer * outer - inner * inner) / (step * step)) + 1, &s, e));

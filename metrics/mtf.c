@@ -78,6 +78,8 @@ bool tg_spread_settle(tg_spread *s, const float *mean)
     double right[TG_SPREAD_TERMS] = {0}, c[TG_SPREAD_TERMS] = {0};
     gsl_matrix_view a = gsl_matrix_view_array(s->inverse, k, k);
     gsl_matrix_set_zero(&a.matrix);
+    s->fitted = 0;
+    s->rest = 0;
     for (size_t j = 0; j < s->n; j++) {
         const double *x = s->fit + TG_SPREAD_TERMS * j;
         for (size_t p = 0; p < k; p++) {
@@ -92,10 +94,20 @@ bool tg_spread_settle(tg_spread *s, const float *mean)
             c[p] += s->inverse[k * p + q] * right[q];
     for (size_t j = 0; j < s->n; j++) {
         s->net[j] = (double)mean[s->index[j]];
-        for (size_t p = 0; p < k; p++)
+        double rest = s->net[j];
+        bool fitted = false;
+        for (size_t p = 0; p < k; p++) {
+            const double x = s->fit[TG_SPREAD_TERMS * j + p];
+            fitted = fitted || x != 0;
+            rest -= x * c[p];
             s->net[j] -= s->model[TG_SPREAD_TERMS * j + p] * c[p];
+        }
+        if (fitted) {
+            s->fitted++;
+            s->rest += rest * rest;
+        }
     }
-    return true;
+    return s->fitted > k;
 }
 
 double tg_spread_sum(const tg_spread *s, double f_per_mm)
@@ -210,13 +222,16 @@ static void weights(const tg_spread *s, double a, double f, double b, double *w)
             w[j] -= s->fit[TG_SPREAD_TERMS * j + p] * back[p];
 }
 
-/** Variance of the noise of one slice where the weights are, and its degrees of freedom. With several slices it is
- *  seen there; with one it is taken to be that of the body. */
+/** Variance of the noise of one slice where the weights are, and its degrees of freedom: between slices, or of one
+ *  slice around its fitted background. */
 static double local_variance(const tg_target *t, const tg_spread *s, const double *w, double *dof)
 {
+    const double apart = tg_noise_independent(&t->noise, t->grid.n[0], s->index, s->n) / (double)s->n;
     double sum = 0, second = 0, fourth = 0;
-    *dof = t->noise.dof;
-    if (t->n < 2) return t->noise.sd * t->noise.sd;
+    if (t->n < 2) {
+        *dof = fmax(1, apart * (double)(s->fitted - s->terms));
+        return s->rest / (double)(s->fitted - s->terms);
+    }
     for (size_t j = 0; j < s->n; j++) {
         double scatter = 0;
         for (size_t k = 0; k < t->n; k++) {
@@ -228,8 +243,6 @@ static double local_variance(const tg_target *t, const tg_spread *s, const doubl
         second += w2;
         fourth += w2 * w2;
     }
-    const size_t nx = t->grid.n[0];
-    const double apart = tg_noise_independent(&t->noise, nx, s->index, s->n) / (double)s->n;
     *dof = fmax(1, (double)(t->n - 1) * apart * second * second / fourth);
     return sum / second;
 }

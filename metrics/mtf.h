@@ -57,6 +57,8 @@ typedef struct tg_spread {
     size_t terms;    /* of the background, found by least squares over the pixels where its `fit` is not 0 */
     double *fit;     /* {n, TG_SPREAD_TERMS} regressors */
     double *model;   /* {n, TG_SPREAD_TERMS} what a coefficient adds to the background of a pixel */
+    size_t fitted;   /* pixels that the fit saw */
+    double rest;     /* sum of their squared residuals */
     double inverse[TG_SPREAD_TERMS * TG_SPREAD_TERMS];
     double (*kernel)(const struct tg_spread *s, double r_mm, double f_per_mm);
     double radius_mm;                                  /* of the edge; 0: a point */
