@@ -206,6 +206,8 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         TG_TRY(look_around(t, solid, centre_mm, &s, &d, out, e));
         if (*out->level[0].why || !find_edge(t, &d, &s, centre_mm, out)) goto done;
         radius_mm = s.radius_mm;
+        TG_TRY(tg_spread_visible(t, &s, out, e));
+        if (*out->level[0].why) goto done;
         tg_spread_curve(t, &s, out);
         const double seen = 0.4413 / out->level[TG_MTF_HALF].f_per_mm; /* of a Gaussian with this frequency */
         if (!(fabs(seen - width) > 0.05 * width)) break;

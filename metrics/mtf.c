@@ -283,18 +283,25 @@ static double aliased(const tg_target *t, const tg_mtf *out, double f)
     return sqrt(2) * sum; /* each pair of repetitions adds 2 sum cos(phase), root mean square sqrt(2) sum */
 }
 
-tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
+tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
 {
     tg_code code = TG_OK;
     double *w = NULL, dof;
+    TG_TRY(TG_NEW(w, s->n, e));
+    weights(s, 0, 0, 1 / tg_spread_sum(s, 0), w);
+    const double u_whole = noise_of(t, s, w, &dof);
+    if (!(u_whole < 0.1)) tg_mtf_refuse(out, "too much noise for its contrast; pool more slices");
+done:
+    tg_free(w);
+    return code;
+}
+
+tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
+{
+    tg_code code = TG_OK;
+    double *w = NULL;
     const double whole = tg_spread_sum(s, 0), share = method_share(t, out);
     TG_TRY(TG_NEW(w, s->n, e));
-    weights(s, 0, 0, 1 / whole, w);
-    const double u_whole = noise_of(t, s, w, &dof);
-    if (!(u_whole < 0.1)) {
-        tg_mtf_refuse(out, "too much noise for its contrast: 1 to %.2g", fmin(1 / u_whole, 10));
-        goto done;
-    }
     double u_alias[TG_MTF_LEVELS] = {0};
     for (int i = 0; i < TG_MTF_LEVELS; i++)
         if (s->radius_mm <= 0 && !isnan(out->level[i].f_per_mm)) u_alias[i] = aliased(t, out, out->level[i].f_per_mm);

@@ -78,6 +78,10 @@ bool tg_spread_settle(tg_spread *s, const float *mean);
 /** sum_j kernel(r_j, f) share_j net_j */
 double tg_spread_sum(const tg_spread *s, double f_per_mm);
 
+/** Does the object stand out of the noise, its total by ten standard uncertainties? Else a why goes to `out`: a ratio
+ * to that total is linear in the noise only then. */
+tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e);
+
 /** Curve and frequencies at the levels, without uncertainties. */
 void tg_spread_curve(const tg_target *t, const tg_spread *s, tg_mtf *out);
 

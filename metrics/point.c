@@ -137,6 +137,8 @@ tg_code tg_mtf_by_point(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         s.object = t->phantom->solid[solid].shape == TG_SPHERE ? tg_mtf_ball : tg_mtf_disc;
         TG_TRY(clear_reach(t, solid, centre_mm, &s, &reach_mm, out, e));
         if (*out->level[0].why || !find_centre(t, reach_mm, &s, centre_mm, out)) goto done;
+        TG_TRY(tg_spread_visible(t, &s, out, e));
+        if (*out->level[0].why) goto done;
         tg_spread_curve(t, &s, out);
         const double seen = 0.4413 / out->level[TG_MTF_HALF].f_per_mm; /* of a Gaussian with this frequency */
         if (!(fabs(seen - width) > 0.05 * width)) break;
