@@ -7,6 +7,9 @@
 
 enum { SPAN = 256 }; /* pixels of a row that are worked on together, in the nearest cache */
 
+/* A ray through the middle of an outermost channel is on the detector, whichever way it is rounded. */
+static const double slack_channels = 1e-6;
+
 struct tg_backprojector {
     tg_geometry geometry;
     size_t channels, views, stride;
@@ -24,12 +27,6 @@ typedef struct {
     int n;
 } span;
 
-/* Where the pixels of a span fall on the detector, and what they weigh there. */
-typedef struct {
-    double channel[SPAN];
-    float weight[SPAN];
-} footprint;
-
 tg_code tg_backprojector_create(const tg_scan *scan, const tg_grid *grid, size_t stride, tg_backprojector **out,
                                 tg_error *e)
 {
@@ -45,8 +42,8 @@ tg_code tg_backprojector_create(const tg_scan *scan, const tg_grid *grid, size_t
                             .per_rad = 1 / scan->channel_step,
                             .source_axis_mm = scan->source_axis_mm,
                             .grid = *grid};
-    const double low = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, 0));
-    const double high = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, (double)scan->channels - 1));
+    const double low = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, -slack_channels));
+    const double high = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, (double)scan->channels - 1 + slack_channels));
     b->low[0] = sin(low), b->low[1] = cos(low);
     b->high[0] = sin(high), b->high[1] = cos(high);
     TG_TRY(TG_NEW(b->turn, b->views, e));
@@ -82,25 +79,26 @@ static void cut(double a, double b, int *from, int *to)
     }
 }
 
-/* 0..last, against rounding at the detector's ends. */
-static inline double clamp(double channel, double last)
+/* The row at a channel, linear between two; clamped, as slack and rounding may have left the outermost ones. */
+static inline float sample(const float *row, double channel, double last)
 {
     channel = channel > 0 ? channel : 0;
-    return channel < last ? channel : last;
+    channel = channel < last ? channel : last;
+    const int below = (int)channel;
+    return row[below] + (float)(channel - below) * (row[below + 1] - row[below]);
 }
 
-static void place_parallel(const tg_backprojector *b, const double turn[2], const span *s, int *from, int *to,
-                           footprint *f)
+static void add_parallel(const tg_backprojector *b, const double turn[2], const span *s, const float *restrict row,
+                         float *restrict sum)
 {
     const double last = (double)b->channels - 1;
     const double first = b->zero + (s->x0_mm * turn[0] + s->y_mm * turn[1]) * b->per_mm;
     const double step = s->step_mm * turn[0] * b->per_mm;
-    cut(first, step, from, to);
-    cut(last - first, -step, from, to);
-    for (int i = *from; i < *to; i++) {
-        f->channel[i] = clamp(first + i * step, last);
-        f->weight[i] = 1;
-    }
+    int from = 0, to = s->n;
+    cut(first + slack_channels, step, &from, &to);
+    cut(last + slack_channels - first, -step, &from, &to);
+    for (int i = from; i < to; i++)
+        sum[i] += sample(row, first + i * step, last);
 }
 
 /* Sideways and forward distance from the source of the first pixel of a span, and their steps. */
@@ -119,15 +117,16 @@ static sight look(const tg_backprojector *b, const double turn[2], const span *s
     return v;
 }
 
-static void place_equispaced(const tg_backprojector *b, const double turn[2], const span *s, int *from, int *to,
-                             footprint *f)
+static void add_equispaced(const tg_backprojector *b, const double turn[2], const span *s, const float *restrict row,
+                           float *restrict sum)
 {
-    const sight v = look(b, turn, s, from, to);
+    int from = 0, to = s->n;
+    const sight v = look(b, turn, s, &from, &to);
     const double last = (double)b->channels - 1;
-    for (int i = *from; i < *to; i++) {
+    for (int i = from; i < to; i++) {
         const double nearness = b->source_axis_mm / (v.d + i * v.dd);
-        f->channel[i] = clamp(b->zero + (v.t + i * v.dt) * nearness * b->per_mm, last);
-        f->weight[i] = (float)(nearness * nearness);
+        const double channel = b->zero + (v.t + i * v.dt) * nearness * b->per_mm;
+        sum[i] += (float)(nearness * nearness) * sample(row, channel, last);
     }
 }
 
@@ -146,57 +145,36 @@ static inline double arctangent(double x)
     return sum * x;
 }
 
-static void place_equiangular(const tg_backprojector *b, const double turn[2], const span *s, int *from, int *to,
-                              footprint *f)
+static void add_equiangular(const tg_backprojector *b, const double turn[2], const span *s, const float *restrict row,
+                            float *restrict sum)
 {
-    const sight v = look(b, turn, s, from, to);
+    int from = 0, to = s->n;
+    const sight v = look(b, turn, s, &from, &to);
     const double last = (double)b->channels - 1, r2 = b->source_axis_mm * b->source_axis_mm;
-    for (int i = *from; i < *to; i++) {
-        const double t = v.t + i * v.dt, d = v.d + i * v.dd, l2 = t * t + d * d;
-        const double gamma = 2 * arctangent(t / (sqrt(l2) + d));
-        f->channel[i] = clamp(b->zero + gamma * b->per_rad, last);
-        f->weight[i] = (float)(r2 / l2);
-    }
-}
-
-static void add_row(const float *restrict row, const footprint *restrict f, int from, int to, float *restrict sum)
-{
-    float part[SPAN], pair[SPAN][2];
-    int below[SPAN];
+    double channel[SPAN];
+    float weight[SPAN];
     for (int i = from; i < to; i++) {
-        below[i] = (int)f->channel[i];
-        part[i] = (float)(f->channel[i] - below[i]);
+        const double t = v.t + i * v.dt, d = v.d + i * v.dd, l2 = t * t + d * d;
+        channel[i] = b->zero + 2 * arctangent(t / (sqrt(l2) + d)) * b->per_rad;
+        weight[i] = (float)(r2 / l2);
     }
     for (int i = from; i < to; i++)
-        memcpy(pair[i], row + below[i], sizeof pair[i]);
-    for (int i = from; i < to; i++)
-        sum[i] += f->weight[i] * (pair[i][0] + part[i] * (pair[i][1] - pair[i][0]));
-}
-
-static void backproject_span(const tg_backprojector *b, const float *filtered, const span *s, float *out)
-{
-    float sum[SPAN] = {0};
-    footprint f;
-    for (size_t view = 0; view < b->views; view++) {
-        int from = 0, to = s->n;
-        switch (b->geometry) {
-        case TG_PARALLEL: place_parallel(b, b->turn[view], s, &from, &to, &f); break;
-        case TG_FAN_EQUISPACED: place_equispaced(b, b->turn[view], s, &from, &to, &f); break;
-        case TG_FAN_EQUIANGULAR: place_equiangular(b, b->turn[view], s, &from, &to, &f); break;
-        }
-        add_row(filtered + view * b->stride, &f, from, to, sum);
-    }
-    memcpy(out, sum, (size_t)s->n * sizeof *out);
+        sum[i] += weight[i] * sample(row, channel[i], last);
 }
 
 void tg_backproject_rows(const tg_backprojector *b, const float *filtered, size_t y, size_t rows, float *slice)
 {
+    static void (*const add[])(const tg_backprojector *, const double *, const span *, const float *, float *) = {
+        [TG_PARALLEL] = add_parallel, [TG_FAN_EQUIANGULAR] = add_equiangular, [TG_FAN_EQUISPACED] = add_equispaced};
     const size_t nx = b->grid.n[0];
 #pragma omp parallel for schedule(dynamic)
     for (size_t row = y; row < y + rows; row++)
         for (size_t x = 0; x < nx; x += SPAN) {
             const span s = {tg_grid_mm(&b->grid, 0, (double)x), b->grid.step_mm[0],
                             tg_grid_mm(&b->grid, 1, (double)row), nx - x < SPAN ? (int)(nx - x) : SPAN};
-            backproject_span(b, filtered, &s, slice + row * nx + x);
+            float sum[SPAN] = {0};
+            for (size_t view = 0; view < b->views; view++)
+                add[b->geometry](b, b->turn[view], &s, filtered + view * b->stride, sum);
+            memcpy(slice + row * nx + x, sum, (size_t)s.n * sizeof *sum);
         }
 }

@@ -47,10 +47,12 @@ tg_code tg_filter_create(const tg_scan *scan, const tg_kernel *kernel, tg_filter
 {
     tg_code code = TG_OK;
     tg_filter *f = NULL;
-    if (scan->geometry == TG_FAN_EQUIANGULAR && (double)scan->channels * scan->channel_step >= M_PI)
+    const double low = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, 0));
+    const double high = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, (double)scan->channels - 1));
+    if (low <= -M_PI_2 || high >= M_PI_2)
         TG_TRY(tg_fail(e, TG_INPUT, NULL, 0,
-                       "%zu channels of %.4g degrees make a fan of 180 degrees or more; see CDELT1", scan->channels,
-                       scan->channel_step * 180 / M_PI));
+                       "the fan reaches from %.4g to %.4g degrees; a source sees less than 90 to either side",
+                       low * 180 / M_PI, high * 180 / M_PI));
     TG_TRY(TG_NEW(f, 1, e));
     f->channels = scan->channels;
     f->views = scan->views;

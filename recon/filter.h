@@ -17,7 +17,7 @@ typedef struct tg_filter tg_filter;
 
 /** Plan the filter of a scan's rows, padded to at least twice the channels.
  *  @param filter  set on success
- *  @return TG_OK, TG_INPUT (a fan of 180 degrees or more), TG_MACHINE */
+ *  @return TG_OK, TG_INPUT (a fan of 90 degrees or more to a side), TG_MACHINE */
 tg_code tg_filter_create(const tg_scan *scan, const tg_kernel *kernel, tg_filter **filter, tg_error *e);
 void tg_filter_free(tg_filter *filter);
 
