@@ -53,23 +53,32 @@ static tg_code refuse_rotation(tg_fits *f)
     return TG_OK;
 }
 
+/* A slice without a third axis: through the source and as thick as its pixels, unless it says otherwise. */
+static tg_code read_plane(tg_fits *f, tg_grid *g)
+{
+    tg_code code = TG_OK;
+    g->first_mm[2] = 0;
+    g->step_mm[2] = fabs(g->step_mm[0]);
+    TG_TRY(tg_fits_number(f, "ZPLANE", &g->first_mm[2]));
+    TG_TRY(tg_fits_number(f, "ZSTEP", &g->step_mm[2]));
+    if (!(g->step_mm[2] > 0)) code = tg_fail(f->e, TG_INPUT, f->path, 0, "ZSTEP is not greater than 0");
+done:
+    return code;
+}
+
 static tg_code read_grid(tg_fits *f, tg_grid *g)
 {
     static const char *const types[] = {"X", "Y", "Z"};
     tg_code code = refuse_rotation(f);
     for (int i = 0; i < 3 && code == TG_OK; i++) {
         g->n[i] = f->n[i];
-        if (i >= f->axes) { /* a slice of cubic pixels in the plane of the source */
-            g->step_mm[i] = g->step_mm[0] < 0 ? -g->step_mm[0] : g->step_mm[0];
-            g->first_mm[i] = 0;
-            continue;
-        }
+        if (i >= f->axes) continue;
         tg_fits_axis axis = {types[i], tg_fits_lengths, "pixel size", tg_fits_middle(f->n[i]), 0, NAN};
         code = tg_fits_axis_of(f, i + 1, &axis);
         g->step_mm[i] = axis.step;
         g->first_mm[i] = -tg_fits_axis_zero(&axis) * axis.step;
     }
-    return code;
+    return code != TG_OK || f->axes == 3 ? code : read_plane(f, g);
 }
 
 static void swap(float *a, float *b)
@@ -218,14 +227,18 @@ static tg_fits_axis axis_of(const tg_grid *g, int i)
 tg_code tg_fits_write_image(const char *path, const tg_image *image, const tg_provenance *made, tg_error *e)
 {
     const tg_grid *g = &image->grid;
-    const bool plain = g->n[2] == 1 && g->first_mm[2] == 0 && g->step_mm[2] == g->step_mm[0]; /* as 2-D is read */
+    const int axes = g->n[2] > 1 ? 3 : 2;
     tg_fits f;
-    const tg_code code = tg_fits_create(&f, path, plain ? 2 : 3, g->n, e);
+    const tg_code code = tg_fits_create(&f, path, axes, g->n, e);
     if (code != TG_OK) return code;
     tg_fits_put_text(&f, "BUNIT", image->unit == TG_HU ? "HU" : "mm-1", NULL);
-    for (int i = 0; i < (plain ? 2 : 3); i++) {
+    for (int i = 0; i < axes; i++) {
         const tg_fits_axis axis = axis_of(g, i);
         tg_fits_put_axis(&f, i + 1, &axis);
+    }
+    if (axes == 2) {
+        tg_fits_put_number(&f, "ZPLANE", g->first_mm[2], "[mm] where the slice is");
+        tg_fits_put_number(&f, "ZSTEP", g->step_mm[2], "[mm] how thick it is");
     }
     put_scan(&f, &image->scan);
     tg_fits_put_facts(&f, &image->facts);

@@ -314,6 +314,12 @@ static tg_code read_scan(tg_fits *f, tg_scan *scan, tg_fits_axis *view)
         TG_TRY(tg_fits_axis_of(f, 3, &row));
         scan->row_step_mm = row.step;
         scan->row_zero = tg_fits_axis_zero(&row);
+    } else { /* a single row may say where it is and how wide */
+        double middle = 1;
+        TG_TRY(tg_fits_number(f, "ROWMID", &middle));
+        TG_TRY(tg_fits_number(f, "ROWSTEP", &scan->row_step_mm));
+        scan->row_zero = middle - 1;
+        if (scan->row_step_mm < 0) TG_TRY(tg_fail(f->e, TG_INPUT, f->path, 0, "ROWSTEP is less than 0"));
     }
     const double last = tg_scan_coordinate(scan, (double)scan->channels - 1), first = tg_scan_coordinate(scan, 0);
     if (angle && !(fmax(fabs(first), fabs(last)) < 90 * TG_DEGREE))
@@ -352,7 +358,7 @@ done:
 tg_code tg_fits_write_sinogram(const char *path, const tg_sinogram *s, const tg_provenance *made, tg_error *e)
 {
     const tg_scan *scan = &s->scan;
-    const bool angle = scan->geometry == TG_FAN_EQUIANGULAR, stack = scan->rows > 1 || scan->row_step_mm > 0;
+    const bool angle = scan->geometry == TG_FAN_EQUIANGULAR, stack = scan->rows > 1;
     const size_t n[3] = {scan->channels, scan->views, scan->rows};
     const tg_fits_axis channel = {"CHANNEL", angle ? tg_fits_angles : tg_fits_lengths,
                                   NULL,      scan->channel_zero + 1,
@@ -367,7 +373,12 @@ tg_code tg_fits_write_sinogram(const char *path, const tg_sinogram *s, const tg_
     tg_fits_put_text(&f, "SCANDATA", "line-integral", NULL);
     tg_fits_put_axis(&f, 1, &channel);
     tg_fits_put_axis(&f, 2, &view);
-    if (stack) tg_fits_put_axis(&f, 3, &row);
+    if (stack) {
+        tg_fits_put_axis(&f, 3, &row);
+    } else if (scan->row_step_mm > 0) {
+        tg_fits_put_number(&f, "ROWSTEP", scan->row_step_mm, "[mm] distance of rows");
+        tg_fits_put_number(&f, "ROWMID", scan->row_zero + 1, "row of z = 0, counted from 1");
+    }
     tg_fits_put_facts(&f, &s->facts);
     tg_fits_put_made(&f, made);
     tg_fits_put_samples(&f, s->v);

@@ -249,6 +249,7 @@ static tg_image make_image(int i)
     tg_error e = {0};
     tg_grid g = tg_grid_square(6, 250, centre);
     tg_image image;
+    if (i == 2) g.first_mm[2] = -12.5, g.step_mm[2] = 1.0 / 3; /* one slice off the plane of the source */
     if (i % 2) g = (tg_grid){{4, 3, 5}, {0.7, 0.8, 2.5}, {-3.3, 1.0 / 3, -5}};
     CK_OK(tg_image_create(&g, i % 3 ? TG_HU : TG_PER_MM, &image, &e));
     for (size_t k = 0; k < tg_grid_samples(&g); k++)
@@ -748,6 +749,7 @@ static const struct {
     {FLAT PARALLEL INTEGRAL CHANNEL "CTYPE2  = 'VIEW'\nCUNIT2  = 'deg'\nCRPIX2  = 1\n", "write CDELT2"},
     {FLAT PARALLEL "SCANDATA= 'log'\n" CHANNEL VIEW, "SCANDATA is 'log'"},
     {HEAD("16", "2") "NAXIS1  = 3\nNAXIS2  = 2\n" PARALLEL CHANNEL VIEW, "the data are integers"},
+    {FLAT PARALLEL INTEGRAL CHANNEL VIEW "ROWSTEP = -1\n", "ROWSTEP"},
     {CUBE PARALLEL INTEGRAL CHANNEL VIEW "CTYPE3  = 'ROW'\nCUNIT3  = 'mm'\nCRPIX3  = 1\n", "CDELT3 is missing"},
     {FLAT PARALLEL INTEGRAL CHANNEL VIEW "TUBEKV  = -5\n", "TUBEKV"},
     {FLAT PARALLEL INTEGRAL CHANNEL VIEW "SEED    = 1.5\n", "SEED"},
@@ -788,6 +790,7 @@ static const struct {
     {FLAT "BUNIT   = 'HU'\nCDELT1  = 1\nCDELT2  = 1\nSCANGEOM= 'parallel'\nCHANNELS= 1.5\nCHANSTEP= 1\nCHANAXIS= 1\n"
           "VIEWS   = 1\nVIEWFRST= 0\nVIEWSTEP= 1\nROWS    = 1\nROWSTEP = 0\nROWMID  = 1\n",
      "whole numbers"},
+    {FLAT "BUNIT   = 'HU'\nCDELT1  = 1\nCDELT2  = 1\nZSTEP   = 0\n", "ZSTEP"},
     {HEAD("-32", "1") "NAXIS1  = 6\nBUNIT   = 'HU'\nCDELT1  = 1\n", "one axis"},
 };
 
