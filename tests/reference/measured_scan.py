@@ -33,7 +33,7 @@ checks:
 
 if not SCAN.exists():
     print(f"measured_scan: skipped, {SCAN} is not there")
-    sys.exit(77)
+    sys.exit(78)
 with tempfile.TemporaryDirectory() as folder:
     job, out = pathlib.Path(folder) / "job.yaml", pathlib.Path(folder) / "out"
     job.write_text(JOB)
