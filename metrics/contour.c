@@ -312,10 +312,16 @@ static void spread_bins(const tg_contour_model *m, const tg_contour *o, const pr
 {
     const tg_grid *g = m->grid;
     const double bin_mm = g->step_mm[0] / FINE, half_mm = 0.5 * (double)bins * bin_mm;
+    double middle[2], inner, outer = 0;
+    tg_section_circle(m->solid, m->z_mm, middle, &inner);
+    for (int k = 0; k < 360; k++)
+        outer = fmax(outer, radius(m, o, k * M_PI / 180));
     for (size_t y = 0; y < g->n[1]; y++) {
         for (size_t x = 0; x < g->n[0]; x++) {
             const double at[2] = {tg_grid_mm(g, 0, (double)x), tg_grid_mm(g, 1, (double)y)};
-            const double dx = at[0] - o->centre_mm[0], dy = at[1] - o->centre_mm[1], angle = atan2(dy, dx);
+            const double dx = at[0] - o->centre_mm[0], dy = at[1] - o->centre_mm[1], r = hypot(dx, dy);
+            if (r < o->scale * inner - half_mm || r > outer + 2 * half_mm) continue;
+            const double angle = atan2(dy, dx);
             const double turn = angle < 0 ? angle + 2 * M_PI : angle;
             const size_t k = (size_t)(turn / (2 * M_PI) * (double)p->arcs + 0.5) % p->arcs;
             double change[PARAMETERS];

@@ -51,25 +51,33 @@ static void box_blur(float *v, size_t n, size_t axis, size_t half, double *line)
     }
 }
 
-/** Part of each pixel of a row that a solid covers, by lines across its middle: as many as its own height asks for, so
- *  that a thin wire is as exact as a rod.  @param low,high  where the solid ends along y  @param line {pixels} written
- */
+/** Integral of a triangle of half width and area 1 from minus infinity. */
+static double triangle(double u)
+{
+    if (u <= -1 || u >= 1) return u > 0;
+    return u < 0 ? 0.5 * (1 + u) * (1 + u) : 1 - 0.5 * (1 - u) * (1 - u);
+}
+
+/** What a solid covers of a row, as seen through triangles two pixels wide: whatever is thinner than a pixel keeps its
+ *  area and its place. By lines within the height of the solid.
+ *  @param low,high  where the solid ends along y  @param line  {pixels} written */
 static void cover_row(const tg_contour_model *m, const tg_solid *s, const tg_grid *g, size_t row, double low,
                       double high, double *line)
 {
-    enum { LINES = 8 };
-    const double y = tg_grid_mm(g, 1, (double)row), half = 0.5 * g->step_mm[1], step_mm = g->step_mm[0];
-    const double from = fmax(y - half, low), height = fmin(y + half, high) - from;
+    enum { LINES = 16 };
+    const double y = tg_grid_mm(g, 1, (double)row), step_mm = g->step_mm[0], last = (double)g->n[0] - 1;
+    const double from = fmax(y - step_mm, low), height = fmin(y + step_mm, high) - from;
     for (size_t i = 0; i < g->n[0]; i++)
         line[i] = 0;
     for (int k = 0; k < LINES && height > 0; k++) {
+        const double at = from + height * (k + 0.5) / LINES;
+        const double weight = height / LINES / step_mm * (1 - fabs(at - y) / step_mm);
+        const double point[2] = {m->middle_mm[0] + g->first_mm[0], m->middle_mm[1] + at};
         double t[2];
-        const double point[2] = {m->middle_mm[0] + g->first_mm[0] - 0.5 * step_mm,
-                                 m->middle_mm[1] + from + height * (k + 0.5) / LINES};
         if (!tg_section_chord(s, m->z_mm, point, 0, t)) continue;
-        const double a = fmax(t[0] / step_mm, 0), b = fmin(t[1] / step_mm, (double)g->n[0]);
-        for (size_t i = (size_t)a; (double)i < b; i++)
-            line[i] += height / (2 * half) / LINES * (fmin(b, (double)i + 1) - fmax(a, (double)i));
+        const double a = t[0] / step_mm, b = t[1] / step_mm;
+        for (double i = fmax(ceil(a - 1), 0); i <= fmin(floor(b + 1), last); i++)
+            line[(size_t)i] += weight * (triangle(b - i) - triangle(a - i));
     }
 }
 
@@ -276,11 +284,13 @@ static void doubt(const agreement *a, const bool *may, size_t best, int order, d
     }
     /* the lobe of the best turn: as far as the phantom is still much like itself */
     size_t lobe = 0;
-    while (lobe < ANGLES / 2 && a->own[lobe] > 0.7 * a->own[0])
+    while (lobe < ANGLES / 2 && a->own[lobe] > 0.5 * a->own[0])
         lobe++;
     for (size_t i = 0; i < ANGLES; i++) {
         const double apart = folded((double)i - (double)best, order);
-        if (!may[i] || fabs(apart) <= (double)lobe) continue;
+        const bool peak =
+            a->cross[i] >= a->cross[(i + 1) % ANGLES] && a->cross[i] >= a->cross[(i + ANGLES - 1) % ANGLES];
+        if (!may[i] || !peak || fabs(apart) <= (double)lobe) continue;
         const double unlike = 1 - a->own[(size_t)fabs(apart)] / a->own[0];
         const double lead = a->cross[best] - a->cross[i];
         if (lead < fmax(4 * u * sqrt(2 * unlike), 0.3 * gain * a->own[0] * unlike)) {
@@ -332,9 +342,11 @@ static void settle(const tg_contour_model *m, const tg_contour *o, const agreeme
         weight += own_weight;
         turn += o->turn_rad / unit;
     }
+    /* where noise is absent, the pixels still leave some hundredths of their width */
+    const double grid = 0.03 * m->grid->step_mm[0] / (0.5 * sqrt(tg_section_area_mm2(m->solid, m->z_mm)));
     out->turn_known = true;
     out->pose.turn_rad = folded(turn, order > 1 ? order : 1) * 2 * M_PI / ANGLES;
-    out->turn_u_rad = 2 * M_PI / ANGLES / sqrt(weight);
+    out->turn_u_rad = hypot(2 * M_PI / ANGLES / sqrt(weight), grid);
 }
 
 tg_code tg_locate_turn(const tg_contour_model *m, const tg_contour *o, const tg_phantom *phantom, const double *mu,
