@@ -150,7 +150,7 @@ bool tg_contour_fit(const tg_contour_model *m, const double (*point_mm)[2], size
 typedef struct {
     size_t arcs, rays, samples; /* rays per arc; samples per profile */
     double step_mm;             /* between samples; sample j is at (j - samples / 2) step_mm from the outline */
-    double *profile;            /* {samples} of one arc */
+    double *profile, *count;    /* {samples} of one arc, and how many rays are behind it */
     double *inside, *outside;   /* {arcs} levels, NaN: not seen */
     double *cross_mm;           /* {arcs} where the half of the step is, along the ray; NaN: nowhere */
     double (*point_mm)[2];      /* {arcs} the same in the image */
@@ -160,6 +160,7 @@ typedef struct {
 static void profiles_free(profiles *p)
 {
     tg_free(p->profile);
+    tg_free(p->count);
     tg_free(p->inside);
     tg_free(p->outside);
     tg_free(p->cross_mm);
@@ -178,6 +179,7 @@ static tg_code profiles_create(const tg_contour_model *m, profiles *p, tg_error 
     p->rays = (size_t)ceil(fmin(around / step_mm, 1e5) / (double)p->arcs) + 1;
     p->samples = 2 * (size_t)fmin(m->width_mm / p->step_mm, 1e4) + 1;
     TG_TRY(TG_NEW(p->profile, p->samples, e));
+    TG_TRY(TG_NEW(p->count, p->samples, e));
     TG_TRY(TG_NEW(p->inside, p->arcs, e));
     TG_TRY(TG_NEW(p->outside, p->arcs, e));
     TG_TRY(TG_NEW(p->cross_mm, p->arcs, e));
@@ -198,42 +200,35 @@ static double arc_angle(const profiles *p, double arc)
     return 2 * M_PI * arc / (double)p->arcs;
 }
 
-/** Mean profile of an arc over the rays that lie in the image as a whole.  @return false: fewer than half of them */
-static bool take_profile(const tg_contour_model *m, const tg_contour *o, size_t arc, profiles *p)
+/** Mean profile of an arc; NaN where fewer than half of its rays lie in the image. */
+static void take_profile(const tg_contour_model *m, const tg_contour *o, size_t arc, profiles *p)
 {
-    size_t whole = 0;
     for (size_t j = 0; j < p->samples; j++)
-        p->profile[j] = 0;
+        p->profile[j] = p->count[j] = 0;
     for (size_t i = 0; i < p->rays; i++) {
         const double angle = arc_angle(p, (double)arc + ((double)i + 0.5) / (double)p->rays - 0.5);
         const double c = cos(angle), s = sin(angle), r = radius(m, o, angle);
-        double at[2][2];
-        for (int end = 0; end < 2; end++) {
-            const double ray_mm = r + offset_mm(p, end ? p->samples - 1 : 0);
-            at[end][0] = o->centre_mm[0] + ray_mm * c;
-            at[end][1] = o->centre_mm[1] + ray_mm * s;
-        }
-        if (isnan(tg_sample(m->image, m->grid, at[0])) || isnan(tg_sample(m->image, m->grid, at[1]))) continue;
         for (size_t j = 0; j < p->samples; j++) {
             const double ray_mm = r + offset_mm(p, j);
             const double point[2] = {o->centre_mm[0] + ray_mm * c, o->centre_mm[1] + ray_mm * s};
-            p->profile[j] += tg_sample(m->image, m->grid, point);
+            const double v = tg_sample(m->image, m->grid, point);
+            if (isnan(v)) continue;
+            p->profile[j] += v;
+            p->count[j]++;
         }
-        whole++;
     }
     for (size_t j = 0; j < p->samples; j++)
-        p->profile[j] /= (double)whole;
-    return 2 * whole >= p->rays;
+        p->profile[j] = 2 * p->count[j] >= (double)p->rays ? p->profile[j] / p->count[j] : (double)NAN;
 }
 
-/** Mean of a profile between two distances from the outline. */
+/** Mean of a profile between two distances from the outline; NaN where nothing is seen of it. */
 static double level(const profiles *p, double from_mm, double to_mm)
 {
     double sum = 0;
     size_t n = 0;
     for (size_t j = 0; j < p->samples; j++) {
         const double at = offset_mm(p, j);
-        if (at < from_mm || at > to_mm) continue;
+        if (at < from_mm || at > to_mm || isnan(p->profile[j])) continue;
         sum += p->profile[j];
         n++;
     }
@@ -268,10 +263,10 @@ static void cross(const tg_contour_model *m, tg_contour *o, profiles *p)
 {
     const double clear = 1.5 * m->spread_mm;
     for (size_t k = 0; k < p->arcs; k++) {
-        const bool seen = take_profile(m, o, k, p);
-        p->inside[k] = seen ? level(p, -INFINITY, -clear) : (double)NAN;
-        p->outside[k] = seen ? level(p, clear, INFINITY) : (double)NAN;
-        p->cross_mm[k] = seen ? crossing(p, p->inside[k], p->outside[k]) : (double)NAN;
+        take_profile(m, o, k, p);
+        p->inside[k] = level(p, -INFINITY, -clear);
+        p->outside[k] = level(p, clear, INFINITY);
+        p->cross_mm[k] = crossing(p, p->inside[k], p->outside[k]);
     }
     o->inside = median(p->inside, p->arcs, p->scratch);
     o->outside = median(p->outside, p->arcs, p->scratch);

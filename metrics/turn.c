@@ -273,7 +273,8 @@ static double slack(const tg_contour_model *m, const tg_contour *o)
 static void doubt(const agreement *a, const bool *may, size_t best, int order, double spread_mm, char lost[200])
 {
     const double gain = a->cross[best] / a->own[0];
-    const double u = a->noise * spread_mm * sqrt(a->own[0]); /* of cross, noise correlated over the spread */
+    /* standard uncertainty of cross, for noise that passed the same Gaussian spread: correlated over 2.27 FWHM^2 */
+    const double u = a->noise * spread_mm * sqrt(2.27 * a->own[0]);
     if (!(a->cross[best] > 5 * u)) {
         snprintf(lost, 200, "the pattern of the solids does not stand out from the noise");
         return;
@@ -293,7 +294,7 @@ static void doubt(const agreement *a, const bool *may, size_t best, int order, d
         if (!may[i] || !peak || fabs(apart) <= (double)lobe) continue;
         const double unlike = 1 - a->own[(size_t)fabs(apart)] / a->own[0];
         const double lead = a->cross[best] - a->cross[i];
-        if (lead < fmax(4 * u * sqrt(2 * unlike), 0.3 * gain * a->own[0] * unlike)) {
+        if (lead < fmax(3 * u * sqrt(2 * unlike), 0.3 * gain * a->own[0] * unlike)) {
             snprintf(lost, 200, "turns of %.4g and %.4g degrees fit equally well", (double)best * 360 / ANGLES,
                      (double)i * 360 / ANGLES);
             return;
@@ -329,11 +330,11 @@ static void settle(const tg_contour_model *m, const tg_contour *o, const agreeme
 {
     double turn = 0, weight = 0;
     if (agreed) {
-        /* noise that hangs together over the spread, at edges as wide as that */
+        /* noise that hangs together over 1.5 FWHM along edges whose slope is 1 / 1.06 FWHM of their height */
         double curvature;
         turn = top(a, best, &curvature);
         const double gain = a->cross[best] / a->own[0], noise = a->noise * m->spread_mm;
-        weight = gain * curvature / fmax(1.06 * noise * noise, 1e-12 * curvature * gain);
+        weight = gain * curvature / fmax(1.5 * 1.06 * noise * noise, 1e-12 * curvature * gain);
     }
     if (!m->round) {
         const double own = (double)best - folded((double)best, outline_order), unit = 2 * M_PI / ANGLES;
