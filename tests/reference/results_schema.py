@@ -81,6 +81,26 @@ def check_csv(path, results):
     return len(rows)
 
 
+def noise_part(results, measure, where):
+    return next(r["uncertainty_noise"] for r in results["reconstructions"][0]["results"]
+                if r["measure"] == measure and r["where"] == where)
+
+
+def check_pooled(folder, whole, schema):
+    """Two images of independent noise: the random uncertainty of a mean falls by sqrt(2). It is itself an estimate from
+    some tens of degrees of freedom, hence the 30 %."""
+    (folder / "scanner.yaml").write_text(SCANNER + "seed: 2\n")
+    assert run(folder, "job.yaml", "again").returncode in (0, 1, 5)
+    r = subprocess.run([PROGRAM, "measure", "wide-1/hann.fits", "again/hann.fits", "--phantom", "disc.yaml", "--spec",
+                        "wide.yaml", "-o", "pooled.json", "--quiet"], cwd=folder, capture_output=True, text=True)
+    assert r.returncode == 0, (r.returncode, r.stdout, r.stderr)
+    pooled = json.loads((folder / "pooled.json").read_text())
+    jsonschema.validate(pooled, schema)
+    ratio = noise_part(whole, "ct-number", "rod") / noise_part(pooled, "ct-number", "rod")
+    assert abs(ratio / 2 ** 0.5 - 1) < 0.3, ratio
+    print(f"measure: two images pooled, random uncertainty of a mean divided by {ratio:.2f} (sqrt(2) = 1.41)")
+
+
 def main():
     schema = json.loads((HERE.parent / "results.schema.json").read_text())
     jsonschema.Draft7Validator.check_schema(schema)
@@ -121,6 +141,7 @@ def main():
         assert alone["reconstructions"][0]["results"] == whole["reconstructions"][0]["results"], \
             "an image measured alone gives other figures than in its job"
         print("measure: the same figures as in the job, valid")
+        check_pooled(folder, whole, schema)
 
 
 try:

@@ -1,0 +1,128 @@
+#include "io/command.h"
+#include "io/fits.h"
+#include "io/memory.h"
+#include "io/output.h"
+#include "metrics/results_file.h"
+
+#include <stdio.h>
+
+typedef struct {
+    tg_text phantom, spec;
+    tg_number unit;
+} measure_options;
+
+static const tg_field fields[] = {
+    {.key = "phantom",
+     .kind = TG_PATH,
+     .at = offsetof(measure_options, phantom),
+     .what = "description of what the images show",
+     .required = true},
+    {.key = "spec",
+     .kind = TG_PATH,
+     .at = offsetof(measure_options, spec),
+     .what = "specification to judge by; without it nothing is judged"},
+    {.key = "unit",
+     .kind = TG_CHOICE,
+     .at = offsetof(measure_options, unit),
+     .words = "lp/cm lp/mm",
+     .standard = "lp/cm",
+     .what = "unit of spatial frequencies"},
+    {0},
+};
+
+/** Everything that is read, in the order of the results' list of inputs. */
+static tg_code read_all(const tg_call *call, const measure_options *o, tg_phantom *phantom, tg_image *image,
+                        tg_inputs *inputs, tg_error *e)
+{
+    tg_code code = TG_OK;
+    TG_TRY(tg_phantom_read(o->phantom.v, phantom, e));
+    TG_TRY(tg_inputs_add(inputs, o->phantom.v, e));
+    if (o->spec.v) TG_TRY(tg_inputs_add(inputs, o->spec.v, e));
+    for (int i = 0; i < call->n; i++) {
+        TG_TRY(tg_fits_read_image(call->operand[i], &image[i], e));
+        TG_TRY(tg_inputs_add(inputs, call->operand[i], e));
+    }
+done:
+    return code;
+}
+
+static tg_code may_write(const tg_call *call, const tg_inputs *inputs, tg_error *e)
+{
+    const char **paths;
+    if (!call->output) return TG_OK;
+    tg_code code = TG_NEW(paths, inputs->n, e);
+    for (size_t i = 0; paths && i < inputs->n; i++)
+        paths[i] = inputs->input[i].path;
+    if (code == TG_OK) code = tg_output_allowed(call->output, call->force, paths, inputs->n, e);
+    tg_free(paths);
+    return code;
+}
+
+static tg_code report(const tg_call *call, const tg_evaluation *ev, tg_error *e)
+{
+    char *text = NULL;
+    tg_code code = TG_OK;
+    if (call->output) {
+        tg_json *j = tg_results_json(ev);
+        code = tg_json_write(call->output, j, e);
+        tg_json_free(j);
+    }
+    if (code == TG_OK) code = tg_results_text(ev, &text, e);
+    if (code == TG_OK) fputs(text, stdout);
+    tg_free(text);
+    return code;
+}
+
+static tg_code run(tg_call *call, const void *options, tg_error *e)
+{
+    const measure_options *o = options;
+    const tg_examine_options say = {.lp_per_mm = o->unit.v > 0.5};
+    tg_code code = TG_OK;
+    tg_phantom phantom = {0};
+    tg_image *image = NULL;
+    tg_evaluation ev = {0};
+    tg_specification specification = {0};
+    const size_t n = (size_t)call->n;
+    tg_recipe shown = {0};
+    if (!(shown.name.v = tg_copy_text(call->operand[0]))) TG_TRY(tg_no_memory(e, 1, 1));
+    TG_TRY(TG_NEW(image, n, e));
+    TG_TRY(TG_NEW(ev.item, 1, e));
+    ev.n = 1;
+    ev.item->recipe = &shown;
+    TG_TRY(read_all(call, o, &phantom, image, &ev.inputs, e));
+    TG_TRY(may_write(call, &ev.inputs, e));
+    if (call->check) {
+        if (o->spec.v) TG_TRY(tg_specification_read(o->spec.v, &phantom, &specification, e));
+        printf("%d image%s, all inputs are in order\n", call->n, call->n == 1 ? "" : "s");
+        goto done;
+    }
+    if (!(ev.phantom_name = tg_copy_text(phantom.name.v))) TG_TRY(tg_no_memory(e, 1, 1));
+    TG_TRY(tg_evaluate_images(image, n, &phantom, o->spec.v, &say, call->progress, ev.item, e));
+    ev.verdict = ev.item->verdict;
+    ev.item->image = image[0]; /* the target is gone: the first image says how they were made */
+    image[0] = (tg_image){0};
+    TG_TRY(report(call, &ev, e));
+    call->verdict = tg_verdict_code(ev.verdict);
+done:
+    for (size_t i = 0; image && i < n; i++)
+        tg_image_free(&image[i]);
+    tg_free(image);
+    tg_free(shown.name.v);
+    tg_specification_free(&specification);
+    tg_evaluation_free(&ev);
+    tg_phantom_free(&phantom);
+    return code;
+}
+
+const tg_command tg_measure_command = {
+    .name = "measure",
+    .operands = "IMAGE...",
+    .what = "find a phantom in its images, measure all that it allows and judge by a specification",
+    .example = "tomogauge measure build/demo/hann.fits --phantom phantoms/rods-disc.yaml -o build/results.json",
+    .fields = fields,
+    .size = sizeof(measure_options),
+    .least = 1,
+    .most = 1000,
+    .output = "RESULTS.json",
+    .run = run,
+};
