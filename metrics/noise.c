@@ -173,11 +173,7 @@ tg_code tg_noise_weigh(const tg_noise *noise, const tg_trend *trend, const size_
     pairs_texture(&p, noise, 1);
     const double sum = pairs_sum(&p, &squares);
     for (size_t k = 0; k < trend->modes; k++) {
-        double value[TG_CUP];
-        for (size_t i = 0; i < n; i++) {
-            tg_trend_modes(trend, index[i], value);
-            mode[i] = value[k];
-        }
+        tg_trend_mode(trend, k, index, n, mode);
         pairs_weight(&p, mode);
         const double taken = fmin(fmax(pairs_sum(&p, NULL), 0), 0.5 * count);
         lost += taken;
@@ -262,11 +258,7 @@ static tg_code sum_lags(const tg_target *t, const size_t *index, size_t n, size_
         gather(&fft, half, residual);
     }
     for (size_t k = 0; k < trend.modes; k++) {
-        double value[TG_CUP];
-        for (size_t i = 0; i < n; i++) {
-            tg_trend_modes(&trend, index[i], value);
-            v[i] = value[k];
-        }
+        tg_trend_mode(&trend, k, index, n, v);
         scatter(&fft, &b, index, v, n, nx);
         correlate(&fft);
         gather(&fft, half, modes);

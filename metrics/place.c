@@ -24,7 +24,7 @@ void tg_place_free(tg_place *p)
 
 /** Degrees of freedom that the SD of the whole body lends to that of a small region: noise varies smoothly with place,
  *  so its own pixels have the say as soon as there are a few independent ones. */
-static const double lent_dof = 4;
+static const double lent_dof = 8;
 
 static tg_code figures(const tg_target *t, size_t modes, tg_place *p, tg_error *e)
 {

@@ -57,7 +57,8 @@ void tg_trend_over(size_t modes, const size_t *index, size_t n, size_t nx, tg_tr
     }
 }
 
-void tg_trend_modes(const tg_trend *t, size_t pixel, double *value)
+/** All surfaces at one pixel. */
+static void modes_at(const tg_trend *t, size_t pixel, double *value)
 {
     double p[TG_CUP];
     powers(t, pixel, p);
@@ -68,13 +69,24 @@ void tg_trend_modes(const tg_trend *t, size_t pixel, double *value)
     }
 }
 
+void tg_trend_mode(const tg_trend *t, size_t k, const size_t *index, size_t n, double *value)
+{
+    for (size_t i = 0; i < n; i++) {
+        double p[TG_CUP];
+        powers(t, index[i], p);
+        value[i] = 0;
+        for (size_t j = 0; j <= k; j++)
+            value[i] += t->mode[k][j] * p[j];
+    }
+}
+
 void tg_trend_fit(const tg_trend *t, const size_t *index, size_t n, const float *v, const float *minus,
                   double *coefficient)
 {
     memset(coefficient, 0, t->modes * sizeof *coefficient);
     for (size_t i = 0; i < n; i++) {
         double m[TG_CUP];
-        tg_trend_modes(t, index[i], m);
+        modes_at(t, index[i], m);
         const double value = (double)v[index[i]] - (minus ? (double)minus[index[i]] : 0);
         for (size_t k = 0; k < t->modes; k++)
             coefficient[k] += m[k] * value;
@@ -88,7 +100,7 @@ double tg_trend_remove(const tg_trend *t, const size_t *index, size_t n, const f
     tg_trend_fit(t, index, n, v, minus, c);
     for (size_t i = 0; i < n; i++) {
         double m[TG_CUP], rest = (double)v[index[i]] - (minus ? (double)minus[index[i]] : 0);
-        tg_trend_modes(t, index[i], m);
+        modes_at(t, index[i], m);
         for (size_t k = 0; k < t->modes; k++)
             rest -= c[k] * m[k];
         if (residual) residual[i] = rest;

@@ -17,8 +17,8 @@ typedef struct {
  */
 void tg_trend_over(size_t modes, const size_t *index, size_t n, size_t nx, tg_trend *trend);
 
-/** The surfaces at one pixel.  @param value  {modes} written */
-void tg_trend_modes(const tg_trend *trend, size_t pixel, double *value);
+/** One surface over a set of pixels.  @param value  {n} written */
+void tg_trend_mode(const tg_trend *trend, size_t k, const size_t *index, size_t n, double *value);
 
 /** Least squares over the same set.  @param v  slice  @param minus  slice that is subtracted first, or NULL
  *  @param coefficient  {modes} written */
