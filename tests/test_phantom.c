@@ -1,4 +1,5 @@
 /* Paths through solids that displace each other, and what phantom descriptions may say. */
+#include "io/embedded.h"
 #include "phantoms/phantom.h"
 #include "phantoms/random.h"
 #include "phantoms/scanner.h"
@@ -300,6 +301,78 @@ START_TEST(scanner_refusals)
 }
 END_TEST
 
+static bool starts(const char *text, const char *with)
+{
+    return !strncmp(text, with, strlen(with));
+}
+
+START_TEST(our_own_descriptions)
+{
+    int phantoms = 0, scanners = 0;
+    for (const tg_embedded *f = tg_embedded_files; f->name; f++) {
+        tg_error e = {0};
+        if (!strstr(f->name, ".yaml") || starts(f->name, "spec-") || starts(f->name, "demo-")) continue;
+        if (starts(f->name, "scanner-")) {
+            tg_scanner s;
+            CK_OK(tg_scanner_parse((const char *)f->bytes, f->n, f->name, &s, &e));
+            ck_assert(tg_scan_field_radius_mm(&s.scan) > 110); /* every phantom fits, with air around it */
+            tg_scanner_free(&s);
+            scanners++;
+        } else {
+            tg_phantom p;
+            CK_OK(tg_phantom_parse((const char *)f->bytes, f->n, f->name, &p, &e));
+            tg_phantom_free(&p);
+            phantoms++;
+        }
+        ck_assert_uint_eq(e.count, 0);
+    }
+    ck_assert_int_ge(phantoms, 7);
+    ck_assert_int_ge(scanners, 3);
+}
+END_TEST
+
+START_TEST(rods_keep_apart)
+{
+    tg_phantom p = parse(tg_embedded_text("rods-disc.yaml"));
+    /* regions of the body by IEC 61223-3-5: a tenth of its width, in the middle and 10 mm inside the rim; spreads are
+     * below 1.5 mm wide, and three of them is the distance asked */
+    const double region[5][3] = {{0, 0, 10}, {80, 0, 10}, {0, 80, 10}, {-80, 0, 10}, {0, -80, 10}}, apart = 3 * 1.5;
+    ck_assert_uint_eq(p.n_solids, 9);
+    for (size_t i = 1; i < p.n_solids; i++) {
+        const tg_solid *a = &p.solid[i];
+        ck_assert(a->half_mm[0] >= 8);
+        for (size_t j = 1; j < i; j++) {
+            const tg_solid *b = &p.solid[j];
+            const double d = hypot(a->centre_mm[0] - b->centre_mm[0], a->centre_mm[1] - b->centre_mm[1]);
+            ck_assert_msg(d - a->half_mm[0] - b->half_mm[0] > apart, "%s and %s", a->name.v, b->name.v);
+        }
+        for (int k = 0; k < 5; k++) {
+            const double d = hypot(a->centre_mm[0] - region[k][0], a->centre_mm[1] - region[k][1]);
+            ck_assert_msg(d - a->half_mm[0] - region[k][2] > apart, "%s and region %d", a->name.v, k);
+        }
+    }
+    tg_phantom_free(&p);
+}
+END_TEST
+
+START_TEST(files)
+{
+    tg_error e = {0};
+    tg_phantom p = {0};
+    tg_scanner s = {0};
+    ck_assert_int_eq(tg_phantom_read("no/such.yaml", &p, &e), TG_INPUT);
+    ck_assert_int_eq(tg_scanner_read("no/such.yaml", &s, &e), TG_INPUT);
+    ck_assert_uint_eq(e.count, 2);
+    e = (tg_error){0};
+    CK_OK(tg_phantom_read("phantoms/water-disc.yaml", &p, &e));
+    CK_OK(tg_scanner_read("phantoms/scanner-parallel.yaml", &s, &e));
+    ck_assert_str_eq(p.path, "phantoms/water-disc.yaml");
+    ck_assert_str_eq(s.path, "phantoms/scanner-parallel.yaml");
+    tg_phantom_free(&p);
+    tg_scanner_free(&s);
+}
+END_TEST
+
 Suite *suite_phantom(void);
 Suite *suite_phantom(void)
 {
@@ -311,5 +384,8 @@ Suite *suite_phantom(void)
     tcase_add_test(tcase, refusals);
     tcase_add_test(tcase, scanner_description);
     tcase_add_test(tcase, scanner_refusals);
+    tcase_add_test(tcase, our_own_descriptions);
+    tcase_add_test(tcase, rods_keep_apart);
+    tcase_add_test(tcase, files);
     return suite;
 }
