@@ -1,0 +1,129 @@
+/* Filtered back-projection of one slice, 512 x 512 from 984 views of 736 channels, with all threads. Every row of JSON
+ * holds a time and its ratio to a ceiling measured in the same run: the time in which the machine's float multiply-adds
+ * (for the filter: its memory) could do the same updates, 2 a pixel and view. */
+#include "io/memory.h"
+#include "recon/backproject.h"
+#include "recon/filter.h"
+
+#include <math.h>
+#include <stdio.h>
+#include <time.h>
+
+enum { CHANNELS = 736, VIEWS = 984, PIXELS = 512, ROUNDS = 5 };
+
+static double now_s(void)
+{
+    struct timespec t;
+    clock_gettime(CLOCK_MONOTONIC, &t);
+    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
+}
+
+/* Multiply-adds a second, all threads: independent chains that fit in registers. */
+static double multiply_adds_per_s(void)
+{
+    enum { BLOCKS = 64, TURNS = 200000, CHAINS = 32 };
+    double best = 0;
+    float kept[BLOCKS];
+    for (int round = 0; round < ROUNDS; round++) {
+        const double start = now_s();
+#pragma omp parallel for
+        for (int block = 0; block < BLOCKS; block++) {
+            float chain[CHAINS];
+            for (int i = 0; i < CHAINS; i++)
+                chain[i] = (float)i;
+            for (int turn = 0; turn < TURNS; turn++)
+                for (int i = 0; i < CHAINS; i++)
+                    chain[i] = chain[i] * 0.999F + 0.001F;
+            kept[block] = chain[block % CHAINS];
+        }
+        best = fmax(best, (double)BLOCKS * TURNS * CHAINS / (now_s() - start));
+    }
+    return kept[0] >= 0 ? best : 0;
+}
+
+static double bytes_per_s(void)
+{
+    const size_t n = (size_t)1 << 23;
+    float *a = tg_alloc(n, sizeof *a), *b = tg_alloc(n, sizeof *b);
+    double best = 0;
+    for (int round = 0; a && b && round < ROUNDS; round++) {
+        const double start = now_s();
+#pragma omp parallel for
+        for (size_t i = 0; i < n; i++)
+            a[i] = 0.5F * a[i] + b[i];
+        best = fmax(best, 12 * (double)n / (now_s() - start));
+    }
+    tg_free(a);
+    tg_free(b);
+    return best;
+}
+
+static void report(const char *what, const char *geometry, double seconds, const char *ceiling, double ceiling_s)
+{
+    printf("{\"name\": \"%s/%s\", \"ms\": %.2f, \"ceiling\": \"%s\", \"ratio\": %.4f}\n", what, geometry, 1e3 * seconds,
+           ceiling, ceiling_s / seconds);
+}
+
+static tg_code bench(tg_geometry geometry, const char *name, double adds, double bytes, tg_error *e)
+{
+    static float line[VIEWS * CHANNELS], slice[PIXELS * PIXELS];
+    static double angle_rad[VIEWS], weight[VIEWS];
+    static const double centre[2];
+    tg_code code = TG_OK;
+    tg_scan scan = {.geometry = geometry,
+                    .channels = CHANNELS,
+                    .views = VIEWS,
+                    .rows = 1,
+                    .channel_zero = 0.5 * (CHANNELS - 1),
+                    .channel_step = 0.5,
+                    .angle_rad = angle_rad};
+    if (geometry != TG_PARALLEL) {
+        scan.source_axis_mm = 570;
+        scan.source_detector_mm = 1040;
+        scan.channel_step *= geometry == TG_FAN_EQUIANGULAR ? 1 / 570.0 : 1040 / 570.0;
+    }
+    for (size_t i = 0; i < VIEWS; i++) {
+        angle_rad[i] = 2 * M_PI * (double)i / VIEWS;
+        weight[i] = M_PI / VIEWS;
+    }
+    for (size_t i = 0; i < (size_t)VIEWS * CHANNELS; i++)
+        line[i] = (float)(i % 101);
+    const tg_grid grid = tg_grid_square(PIXELS, 250, centre);
+    tg_kernel kernel = {0};
+    tg_filter *filter = NULL;
+    tg_backprojector *b = NULL;
+    float *filtered = NULL;
+    double best_filter_s = INFINITY, best_s = INFINITY;
+    TG_TRY(tg_kernel_read("hann", &kernel, e));
+    TG_TRY(tg_filter_create(&scan, &kernel, &filter, e));
+    TG_TRY(tg_backprojector_create(&scan, &grid, tg_filter_stride(filter), &b, e));
+    TG_TRY(TG_NEW(filtered, VIEWS * tg_filter_stride(filter), e));
+    for (int round = 0; round < ROUNDS; round++) {
+        const double start = now_s();
+        tg_filter_apply(filter, weight, line, filtered);
+        const double middle = now_s();
+        tg_backproject_rows(b, filtered, 0, PIXELS, slice);
+        best_filter_s = fmin(best_filter_s, middle - start);
+        best_s = fmin(best_s, now_s() - middle);
+    }
+    report("filter", name, best_filter_s, "triad", 4.0 * VIEWS * (CHANNELS + (double)tg_filter_stride(filter)) / bytes);
+    report("backproject", name, best_s, "multiply-add", 2.0 * VIEWS * PIXELS * PIXELS / adds);
+done:
+    tg_kernel_free(&kernel);
+    tg_filter_free(filter);
+    tg_backprojector_free(b);
+    tg_free(filtered);
+    return code;
+}
+
+int main(void)
+{
+    tg_error e = {0};
+    const double adds = multiply_adds_per_s(), bytes = bytes_per_s();
+    printf("{\"name\": \"ceiling\", \"multiply_adds_per_s\": %.3g, \"bytes_per_s\": %.3g}\n", adds, bytes);
+    tg_code code = bench(TG_PARALLEL, "parallel", adds, bytes, &e);
+    if (code == TG_OK) code = bench(TG_FAN_EQUIANGULAR, "fan-equiangular", adds, bytes, &e);
+    if (code == TG_OK) code = bench(TG_FAN_EQUISPACED, "fan-equispaced", adds, bytes, &e);
+    if (code != TG_OK) fprintf(stderr, "bench: %s\n", e.message[0].what);
+    return code;
+}
