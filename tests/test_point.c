@@ -134,7 +134,7 @@ static const Refusal refusals[] = {
 static void spoil(const char *what, Taken *t)
 {
     tg_target *g = &t->c.target;
-    const size_t nx = g->grid.n[0], at = lround(tg_grid_index(&g->grid, 1, 0)) * nx + nx / 2;
+    const size_t nx = g->grid.n[0], at = (size_t)lround(tg_grid_index(&g->grid, 1, 0)) * nx + nx / 2;
     float *v = t->c.image.v;
     if (!strcmp(what, "lost")) strcpy(g->lost, "nowhere to be seen");
     if (!strcmp(what, "number")) v[at] = NAN;
