@@ -194,10 +194,10 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
                           least_radius, width);
             goto done;
         }
-        const double reach = fmin(most_reach * width, 0.9 * radius_mm), outer = 2 * (radius_mm + reach + 2 * width);
-        const double inner = 2 * fmax(0, radius_mm - reach - 2 * width) / sqrt(2);
+        /* not to the centre, where the pixels are too few to stand for an integral over directions */
+        const double reach = fmin(most_reach * width, 0.9 * radius_mm), play = reach + 2 * width + 2 * step;
         tg_spread_free(&s);
-        TG_TRY(tg_spread_create((size_t)((outer * outer - inner * inner) / (step * step)) + 1, &s, e));
+        TG_TRY(tg_spread_create(radius_mm - play, radius_mm + play, step, &s, e));
         s.width_mm = width;
         s.kernel = kernel;
         s.radius_mm = radius_mm;
@@ -213,11 +213,11 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         if (!(fabs(seen - width) > 0.05 * width)) break;
         width = fmin(fmax(seen, 0.5 * width), 2 * width);
     }
-    TG_TRY(tg_spread_uncertainty(t, &s, out, e));
     out->region = (tg_region){.outline = TG_RING,
                               .centre_mm = {centre_mm[0], centre_mm[1]},
                               .inner_mm = fmax(0, radius_mm - s.end_mm),
                               .outer_mm = radius_mm + s.end_mm};
+    TG_TRY(tg_spread_uncertainty(t, &s, out, e));
 done:
     tg_spread_free(&s);
     return code;

@@ -2,6 +2,7 @@
 
 #include "io/memory.h"
 #include "metrics/noise.h"
+#include "metrics/theory.h"
 
 #include <gsl/gsl_linalg.h>
 #include <math.h>
@@ -44,10 +45,15 @@ void tg_mtf_refuse(tg_mtf *out, const char *format, ...)
 
 /* ---- the pixels ---- */
 
-tg_code tg_spread_create(size_t room, tg_spread *s, tg_error *e)
+tg_code tg_spread_create(double least_mm, double most_mm, double step_mm, tg_spread *s, tg_error *e)
 {
     tg_code code = TG_OK;
-    *s = (tg_spread){.room = room};
+    /* the area in pixels, and those that its outlines cut */
+    const double a = fmax(least_mm, 0) / step_mm, b = most_mm / step_mm;
+    const size_t room = (size_t)(M_PI * (b * b - a * a) + 8 * (a + b) + 64);
+    *s = (tg_spread){.room = room, .least_mm = a * step_mm, .knot_mm = step_mm / 256};
+    s->knots = (size_t)ceil((b - a) * 256) + 2;
+    TG_TRY(TG_NEW(s->profile, s->knots, e));
     TG_TRY(TG_NEW(s->index, room, e));
     TG_TRY(TG_NEW(s->r_mm, room, e));
     TG_TRY(TG_NEW(s->phi_rad, room, e));
@@ -67,9 +73,24 @@ void tg_spread_free(tg_spread *s)
     tg_free(s->phi_rad);
     tg_free(s->share);
     tg_free(s->net);
+    tg_free(s->profile);
     tg_free(s->fit);
     tg_free(s->model);
     *s = (tg_spread){0};
+}
+
+/** Gather the pixels by their distance: the kernel interpolated between knots so dense (256 to a pixel) that it bends
+ * by less than 1e-5 between them. */
+static void lay_profile(tg_spread *s)
+{
+    for (size_t i = 0; i < s->knots; i++)
+        s->profile[i] = 0;
+    for (size_t j = 0; j < s->n; j++) {
+        const double at = (s->r_mm[j] - s->least_mm) / s->knot_mm, below = floor(at);
+        const size_t i = (size_t)below;
+        s->profile[i] += (1 - (at - below)) * s->share[j] * s->net[j];
+        s->profile[i + 1] += (at - below) * s->share[j] * s->net[j];
+    }
 }
 
 bool tg_spread_settle(tg_spread *s, const float *mean)
@@ -107,14 +128,15 @@ bool tg_spread_settle(tg_spread *s, const float *mean)
             s->rest += rest * rest;
         }
     }
+    lay_profile(s);
     return s->fitted > k;
 }
 
 double tg_spread_sum(const tg_spread *s, double f_per_mm)
 {
     double sum = 0;
-    for (size_t j = 0; j < s->n; j++)
-        sum += s->kernel(s, s->r_mm[j], f_per_mm) * s->share[j] * s->net[j];
+    for (size_t i = 0; i < s->knots; i++)
+        if (s->profile[i] != 0) sum += s->kernel(s, s->least_mm + s->knot_mm * (double)i, f_per_mm) * s->profile[i];
     return sum;
 }
 
@@ -264,23 +286,50 @@ static double method_share(const tg_target *t, const tg_mtf *out)
     return isnan(ratio) ? 0.002 : 0.002 + 0.08 * fmin(fmax(1.65 - ratio, 0), 0.4);
 }
 
+static double sinc(double x)
+{
+    return x < 1e-9 ? 1 : sin(M_PI * x) / (M_PI * x);
+}
+
+/** Modulation beyond the measured curve. Back-projection with linear interpolation repeats the filtered spectrum of the
+ *  rays at multiples of the sampling frequency, under interpolation and aperture (Kak and Slaney 1988, ch. 3); where
+ *  the scan is not known the modulation is taken to go on falling as a Gaussian does. */
+static double beyond(const tg_target *t, const tg_mtf *out, double f)
+{
+    const double pitch = t->image->scan.channels ? tg_scan_pitch_mm(&t->image->scan) : (double)NAN;
+    const double base = fabs(f - round(f * pitch) / pitch);
+    const double repeated = tg_theory_mtf(t->image, base) * base / f * pow(sinc(f * pitch) / sinc(base * pitch), 3);
+    if (isfinite(repeated)) return fabs(repeated);
+    const int i = isnan(out->level[TG_MTF_TENTH].f_per_mm) ? TG_MTF_HALF : TG_MTF_TENTH;
+    return pow(tg_mtf_level_of[i], pow(f / out->level[i].f_per_mm, 2));
+}
+
 /** What aliasing may add to the modulation of a point at one place among the pixels: the four nearest repetitions of
- *  the spectrum, averaged over directions, at phases that are not known. Beyond the measured curve the modulation is
- *  taken to fall as a Gaussian does. */
+ *  the spectrum, averaged over directions, at phases that are not known. */
 static double aliased(const tg_target *t, const tg_mtf *out, double f)
 {
     enum { DIRECTIONS = 64 };
-    const tg_mtf_level *l =
-        isnan(out->level[TG_MTF_TENTH].f_per_mm) ? &out->level[TG_MTF_HALF] : &out->level[TG_MTF_TENTH];
-    const double at = tg_mtf_level_of[l - out->level], rate = log(at) / (l->f_per_mm * l->f_per_mm);
     double sum = 0;
     for (int axis = 0; axis < 2; axis++)
         for (int i = 0; i < DIRECTIONS; i++) {
             const double angle = 2 * M_PI * i / DIRECTIONS, repeat = 1 / t->grid.step_mm[axis];
-            const double d2 = pow(repeat + f * cos(angle), 2) + pow(f * sin(angle), 2);
-            sum += exp(rate * d2) / DIRECTIONS;
+            sum += beyond(t, out, hypot(repeat + f * cos(angle), f * sin(angle))) / DIRECTIONS;
         }
     return sqrt(2) * sum; /* each pair of repetitions adds 2 sum cos(phase), root mean square sqrt(2) sum */
+}
+
+/** What the channels' sampling may add to the modulation of an edge. It folds the spectrum of the rays at 1 / pitch;
+ * the phase is the edge's place among the channels, which turns from view to view by as much as its centre is off the
+ *  axis: J0(2 pi d / pitch). An edge around the axis sees one phase in all views. */
+static double folded(const tg_target *t, const tg_region *ring, double f)
+{
+    const tg_scan *scan = &t->image->scan;
+    const double pitch = scan->channels ? tg_scan_pitch_mm(scan) : 0, mirror = 1 / pitch - f;
+    if (!(pitch > 0) || mirror < f) return 0;
+    const double known = t->image->facts.aperture_mm.v, aperture = isnan(known) ? pitch : known;
+    const double turns = hypot(ring->centre_mm[0], ring->centre_mm[1]) / pitch;
+    const double left = fmin(1, 1 / (M_PI * sqrt(turns))); /* envelope of J0 */
+    return left * f / mirror * fabs(sinc(mirror * aperture) / sinc(f * aperture)) / sqrt(2);
 }
 
 tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
@@ -302,9 +351,12 @@ tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *ou
     double *w = NULL;
     const double whole = tg_spread_sum(s, 0), share = method_share(t, out);
     TG_TRY(TG_NEW(w, s->n, e));
-    double u_alias[TG_MTF_LEVELS] = {0};
-    for (int i = 0; i < TG_MTF_LEVELS; i++)
-        if (s->radius_mm <= 0 && !isnan(out->level[i].f_per_mm)) u_alias[i] = aliased(t, out, out->level[i].f_per_mm);
+    double alias[TG_MTF_LEVELS] = {0};
+    for (int i = 0; i < TG_MTF_LEVELS; i++) {
+        const double f = out->level[i].f_per_mm;
+        if (isnan(f)) continue;
+        alias[i] = s->radius_mm > 0 ? tg_mtf_level_of[i] * folded(t, &out->region, f) : aliased(t, out, f);
+    }
     for (int i = 0; i < TG_MTF_LEVELS; i++) {
         tg_mtf_level *l = &out->level[i];
         const double f = l->f_per_mm, h = 1e-3 * f;
@@ -313,8 +365,8 @@ tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *ou
         weights(s, 1 / (object(s, f) * whole * slope), f, -tg_mtf_level_of[i] / (whole * slope), w);
         l->u_noise = noise_of(t, s, w, &l->dof);
         l->u_method = share * f;
-        l->u_sampling = u_alias[i] / fabs(slope);
-        if (!(l->u_noise < 0.1 * f)) {
+        l->u_sampling = alias[i] / fabs(slope);
+        if (!(l->u_noise < 0.04 * f)) {
             l->f_per_mm = NAN;
             snprintf(l->why, sizeof l->why,
                      "too much noise: its standard uncertainty would be %.0f %%; pool more slices",

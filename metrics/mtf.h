@@ -49,16 +49,19 @@ enum { TG_SPREAD_TERMS = 4 };
 /** Pixels around an object and the kernel that makes their spectrum. */
 typedef struct tg_spread {
     size_t n, room;
-    size_t *index;   /* {n} flat indices into a slice */
-    double *r_mm;    /* {n} distance from the centre of the object */
-    double *phi_rad; /* {n} direction from there */
-    double *share;   /* {n} the pixel's share of the integral: an area, perhaps over the circumference */
-    double *net;     /* {n} the mean image without its background */
-    size_t terms;    /* of the background, found by least squares over the pixels where its `fit` is not 0 */
-    double *fit;     /* {n, TG_SPREAD_TERMS} regressors */
-    double *model;   /* {n, TG_SPREAD_TERMS} what a coefficient adds to the background of a pixel */
-    size_t fitted;   /* pixels that the fit saw */
-    double rest;     /* sum of their squared residuals */
+    size_t *index;            /* {n} flat indices into a slice */
+    double *r_mm;             /* {n} distance from the centre of the object */
+    double *phi_rad;          /* {n} direction from there */
+    double *share;            /* {n} the pixel's share of the integral: an area, perhaps over the circumference */
+    double *net;              /* {n} the mean image without its background */
+    size_t knots;             /* of the sum over pixels of share times net, gathered by distance */
+    double *profile;          /* {knots} */
+    double least_mm, knot_mm; /* distance of the first, and between two */
+    size_t terms;             /* of the background, found by least squares over the pixels where its `fit` is not 0 */
+    double *fit;              /* {n, TG_SPREAD_TERMS} regressors */
+    double *model;            /* {n, TG_SPREAD_TERMS} what a coefficient adds to the background of a pixel */
+    size_t fitted;            /* pixels that the fit saw */
+    double rest;              /* sum of their squared residuals */
     double inverse[TG_SPREAD_TERMS * TG_SPREAD_TERMS];
     double (*kernel)(const struct tg_spread *s, double r_mm, double f_per_mm);
     double radius_mm;                                  /* of the edge; 0: a point */
@@ -68,8 +71,8 @@ typedef struct tg_spread {
     double size_mm;
 } tg_spread;
 
-/** Room for `room` pixels; nothing in it yet. */
-tg_code tg_spread_create(size_t room, tg_spread *s, tg_error *e);
+/** Room for the pixels at distances from least_mm to most_mm; nothing in it yet.  @param step_mm  of the pixels */
+tg_code tg_spread_create(double least_mm, double most_mm, double step_mm, tg_spread *s, tg_error *e);
 void tg_spread_free(tg_spread *s);
 
 /** Fit and subtract the background of all pixels gathered. @return false: too few pixels for it */
@@ -85,7 +88,7 @@ tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, t
 /** Curve and frequencies at the levels, without uncertainties. */
 void tg_spread_curve(const tg_target *t, const tg_spread *s, tg_mtf *out);
 
-/** Uncertainties of the frequencies; those too uncertain for a linear law get a why. */
+/** Uncertainties of the frequencies, once the region is known; those too uncertain for a linear law get a why. */
 tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e);
 
 /** Is this pixel a number inside the range of the file's pixel type, in every slice? Else the reason goes to `out`. */

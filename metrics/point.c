@@ -128,9 +128,8 @@ tg_code tg_mtf_by_point(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
     double width = fmax(t->spread_mm, step);
     /* the spread at the body's edge is only a first guess of its width here */
     for (int pass = 0; pass < 3; pass++) {
-        const double side = 2 * (most_reach * width / step + 2);
         tg_spread_free(&s);
-        TG_TRY(tg_spread_create((size_t)(side * side), &s, e));
+        TG_TRY(tg_spread_create(0, most_reach * width, step, &s, e));
         s.width_mm = width;
         s.kernel = kernel;
         s.size_mm = 2 * radius_mm;
@@ -144,8 +143,8 @@ tg_code tg_mtf_by_point(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         if (!(fabs(seen - width) > 0.05 * width)) break;
         width = fmin(fmax(seen, 0.5 * width), 2 * width);
     }
-    TG_TRY(tg_spread_uncertainty(t, &s, out, e));
     out->region = (tg_region){.outline = TG_DISC, .centre_mm = {centre_mm[0], centre_mm[1]}, .outer_mm = reach_mm};
+    TG_TRY(tg_spread_uncertainty(t, &s, out, e));
 done:
     tg_spread_free(&s);
     return code;

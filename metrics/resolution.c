@@ -51,7 +51,7 @@ static tg_code add_level(const tg_target *t, int solid, tg_by by, const char *me
         r->value = l->f_per_mm;
         tg_result_budget(r, "noise", l->u_noise, l->dof);
         tg_result_budget(r, "method", l->u_method, INFINITY);
-        tg_result_budget(r, "pixel sampling", l->u_sampling, INFINITY);
+        tg_result_budget(r, "sampling", l->u_sampling, INFINITY);
         tg_result_combine(r);
     }
     if (mtf.n) {
