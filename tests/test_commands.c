@@ -266,6 +266,98 @@ START_TEST(an_interrupt_cleans_up_and_ends_as_interrupts_do)
 }
 END_TEST
 
+static void assert_shows(const char *text)
+{
+    ck_assert_msg(strstr(out, text), "no '%s' in: %s", text, out);
+}
+
+START_TEST(show_tells_what_a_description_holds)
+{
+    static const struct {
+        const char *name, *text;
+    } file[] = {
+        {"rods-disc.yaml", "Phantom rods-disc: 9 solids of 9 materials"},
+        {"rods-disc.yaml", "  ptfe-rod              cylinder  ptfe              49, 9, 0     18, 18, 60\n"},
+        {"ramp-block.yaml",
+         "  ramp-right  box       aluminium  0, 20, 0     80, 20, 0.2   14 deg\n"}, /* ramp: atan 1/4 */
+        {"scanner-fan-equiangular.yaml", "  source to axis      560 mm\n"},
+        {"scanner-fan-equiangular.yaml",
+         "  channels            736, pitch 0.390954 mm at the axis\n"}, /* 560 x 0.04 deg */
+        {"spec-wire-edge-disc.yaml", "  mtf50      wire   wire  computed  +- 0.5\n"},
+        {"demo-job.yaml", "\n  reconstruction  method  kernel "},
+    };
+    for (size_t i = 0; i < sizeof file / sizeof *file; i++) {
+        char arguments[200];
+        snprintf(arguments, sizeof arguments, "show $PHANTOMS/%s", file[i].name);
+        ck_assert_msg(run(arguments) == 0, "%s: %s", file[i].name, err);
+        assert_narrow(out);
+        assert_shows(file[i].text);
+    }
+    /* water at 60 keV: 0.2059 cm2/g (Hubbell and Seltzer 1995); xraylib's tables agree within 0.3 % */
+    ck_assert_int_eq(run("show --energy 60 $PHANTOMS/water-disc.yaml"), 0);
+    double density, mu, hu;
+    ck_assert_int_eq(sscanf(strstr(strstr(out, "density"), "  water"), " water %lf %lf %lf", &density, &mu, &hu), 3);
+    CK_NEAR(mu, 0.02059, 3e-3, 0, "NIST");
+    ck_assert(density == 1 && hu == 0);
+}
+END_TEST
+
+START_TEST(show_prints_examples)
+{
+    ck_assert_int_eq(run("show --example rods-disc"), 0);
+    char file[sizeof out], path[8192];
+    snprintf(path, sizeof path, "%s/rods-disc.yaml", phantoms);
+    slurp(path, file, sizeof file);
+    ck_assert_str_eq(out, file);
+    ck_assert_int_eq(run("show --example rod-disc"), 2);
+    assert_message("--example: there is no 'rod-disc'; did you mean 'rods-disc'?");
+    ck_assert_int_eq(run("show --example xyzzy"), 2);
+    ck_assert_ptr_nonnull(strstr(err, "there are: acrylic-disc, "));
+}
+END_TEST
+
+START_TEST(show_knows_other_files_and_refuses_the_rest)
+{
+    scratch_write("kernel.txt", "# fraction and window\n0 1\n0.5 0.5\n1 0\n");
+    ck_assert_int_eq(run("show kernel.txt"), 0);
+    assert_shows("Kernel file: 3 rows");
+    scratch_write("letter.txt", "Dear reader\n");
+    ck_assert_int_eq(run("show letter.txt"), 3);
+    ck_assert_int_eq(run("show ."), 3);
+    ck_assert_int_eq(run("show none"), 3);
+    ck_assert_int_eq(run("show"), 2);
+    assert_message("show needs a FILE or --example NAME");
+    ck_assert_int_eq(run("show --png kernel.txt -o k.png"), 2);
+    ck_assert_int_eq(run("show kernel.txt -o k.png"), 2);
+    assert_message("a picture needs both: --png -o FILE.png");
+}
+END_TEST
+
+START_TEST(a_scan_becomes_an_image_and_a_picture)
+{
+    scratch_write("scanner.yaml", "scanner: small\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 90\narc: 180\n");
+    ck_assert_int_eq(run("simulate $PHANTOMS/water-disc.yaml scanner.yaml -o s.fits"), 0);
+    ck_assert_int_eq(run("show s.fits"), 0);
+    assert_narrow(out);
+    assert_shows("  channels            64, pitch 4 mm at the axis\n");
+    assert_shows("  views               90 from 0 deg in steps of 2 deg\n");
+    assert_shows("  scanner that scanned it: small\n");
+    ck_assert_int_eq(run("reconstruct s.fits --pixels 32 --kernel hann@0.9 -o i.fits"), 0);
+    ck_assert_int_eq(run("show i.fits"), 0);
+    assert_narrow(out);
+    assert_shows("  pixels              32 x 32 of 7.875 x 7.875 mm\n"); /* 63 pitches wide */
+    assert_shows("  kernel              hann@0.9\n");
+    ck_assert_int_eq(run("show --png i.fits -o i.png --level 0 --width 100"), 0);
+    char png[64];
+    slurp("i.png", png, sizeof png);
+    ck_assert_int_eq(memcmp(png, "\x89PNG", 4), 0);
+    ck_assert_int_eq(run("show --png s.fits -o j.png"), 2);
+    ck_assert_int_eq(run("show --png i.fits -o j.png --slice 2"), 2);
+    assert_message("--slice: the image has 1 of them");
+    ck_assert_int_eq(run("show --png i.fits -o i.fits"), 2); /* not over its input */
+}
+END_TEST
+
 Suite *suite_commands(void);
 Suite *suite_commands(void)
 {
@@ -278,6 +370,10 @@ Suite *suite_commands(void)
     tcase_add_test(tcase, messages_are_plain_lines_and_counted);
     tcase_add_test(tcase, what_cannot_be_printed_ends_with_4);
     tcase_add_test(tcase, a_scan_is_simulated_and_nothing_foreign_is_replaced);
+    tcase_add_test(tcase, show_tells_what_a_description_holds);
+    tcase_add_test(tcase, show_prints_examples);
+    tcase_add_test(tcase, show_knows_other_files_and_refuses_the_rest);
+    tcase_add_test(tcase, a_scan_becomes_an_image_and_a_picture);
     tcase_add_test(tcase, an_interrupt_cleans_up_and_ends_as_interrupts_do);
     return suite;
 }
