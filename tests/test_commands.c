@@ -358,6 +358,39 @@ START_TEST(a_scan_becomes_an_image_and_a_picture)
 }
 END_TEST
 
+/* Exit statuses of a job: the scan is water, so 0 HU passes, 100 HU fails, and a body is no wire. */
+static const struct {
+    const char *check, *verdict;
+    int status;
+} judged[] = {
+    {"measure: ct-number, in: body, nominal: 0, tolerance: 50", "pass", 0},
+    {"measure: ct-number, in: body, nominal: 100, tolerance: 50", "fail", 1},
+    {"measure: mtf50, at: body, by: wire, low: 1", "inconclusive", 5},
+};
+
+START_TEST(the_verdict_is_the_exit_status)
+{
+    char text[256];
+    scratch_write("p.yaml", "phantom: p\nmaterials: [{name: water, compound: \"Water, Liquid\"}]\n"
+                            "solids: [{name: body, shape: cylinder, material: water, radius: 50, length: 20}]\n");
+    scratch_write("scanner.yaml", "scanner: s\ngeometry: parallel\nchannels: 160\npitch: 0.8\nviews: 240\narc: 180\n"
+                                  "photons: 1e6\n");
+    scratch_write("j.yaml", "job: j\nphantom: p.yaml\nscanner: scanner.yaml\nspecification: s.yaml\n"
+                            "reconstructions: [{name: a, pixels: 128}]\n");
+    snprintf(text, sizeof text, "specification: s\nchecks: [{%s}]\n", judged[_i].check);
+    scratch_write("s.yaml", text);
+    ck_assert_int_eq(run("evaluate j.yaml --check -o done"), 0);
+    ck_assert_int_ne(access("done", F_OK), 0); /* --check does nothing */
+    ck_assert_int_eq(run("evaluate j.yaml -o done"), judged[_i].status);
+    ck_assert_str_eq(err, "");
+    assert_narrow(out);
+    snprintf(text, sizeof text, "verdict: %s\n", judged[_i].verdict);
+    ck_assert_ptr_eq(strstr(out, text), out);
+    ck_assert_int_eq(access("done/report.html", F_OK), 0);
+    ck_assert_int_eq(run("measure done/a.fits --phantom p.yaml --spec s.yaml"), judged[_i].status);
+}
+END_TEST
+
 Suite *suite_commands(void);
 Suite *suite_commands(void)
 {
@@ -374,6 +407,7 @@ Suite *suite_commands(void)
     tcase_add_test(tcase, show_prints_examples);
     tcase_add_test(tcase, show_knows_other_files_and_refuses_the_rest);
     tcase_add_test(tcase, a_scan_becomes_an_image_and_a_picture);
+    tcase_add_loop_test(tcase, the_verdict_is_the_exit_status, 0, sizeof judged / sizeof *judged);
     tcase_add_test(tcase, an_interrupt_cleans_up_and_ends_as_interrupts_do);
     return suite;
 }
