@@ -103,7 +103,7 @@ bench: $(BENCH:%=$(B)/bench-%) ## bench: speed as ratios to ceilings measured in
 fuzz-%: tests/fuzz/fuzz_%.c $(B)/embedded.c ## fuzz-NAME: T=60 seconds of libFuzzer on one reader (fits yaml phantom ...)
 	@mkdir -p build/fuzz/$*
 	clang $(CPP_) -std=c11 -g -O1 -fsanitize=fuzzer,address,undefined -fno-sanitize-recover=all -Wno-unknown-pragmas \
-	    $< $(LIB_SRC) $(B)/embedded.c $(LIBS_) -o build/fuzz/fuzz-$*
+	    $< $(LIB_SRC) $(B)/embedded.c $(LIBS_) -lgomp -o build/fuzz/fuzz-$*
 	LSAN_OPTIONS=suppressions=tests/lsan.supp:print_suppressions=0 \
 	    build/fuzz/fuzz-$* -max_total_time=$(T) -timeout=20 -rss_limit_mb=4096 build/fuzz/$* tests/fuzz/corpus/$*
 
