@@ -158,10 +158,16 @@ static size_t occurrence_of(const tg_evaluated *item, size_t index)
     return n;
 }
 
-static void put_cell(FILE *out, const tg_result *r, const char *reconstruction)
+/* A reconstruction that nothing judges needs no room for limits and verdicts. */
+static const char *cell_class(const tg_evaluated *item)
 {
-    fputs("<td data-of=\"", out);
-    put_escaped(out, reconstruction);
+    return item->verdict == TG_NO_LIMITS ? " class=\"unjudged\"" : "";
+}
+
+static void put_cell(FILE *out, const tg_result *r, const tg_evaluated *item)
+{
+    fprintf(out, "<td%s data-of=\"", cell_class(item));
+    put_escaped(out, item->recipe->name.v);
     if (!r) {
         fputs("\"><span class=\"value\">not measured</span></td>", out);
         return;
@@ -203,7 +209,7 @@ static void put_row(FILE *out, const tg_evaluation *ev, const tg_result *like, s
     put_escaped(out, like->unit);
     fputs("</td>", out);
     for (size_t i = 0; i < ev->n; i++)
-        put_cell(out, find(&ev->item[i], like, occurrence), ev->item[i].recipe->name.v);
+        put_cell(out, find(&ev->item[i], like, occurrence), &ev->item[i]);
     fputs("</tr>\n", out);
 }
 
@@ -218,7 +224,7 @@ static void put_table(FILE *out, const tg_evaluation *ev)
           "scope=\"col\">Unit</th>",
           out);
     for (size_t i = 0; i < ev->n; i++) {
-        fputs("<th scope=\"col\">", out);
+        fprintf(out, "<th scope=\"col\"%s>", cell_class(&ev->item[i]));
         put_escaped(out, ev->item[i].recipe->name.v);
         fputs("<br>", out);
         put_verdict(out, ev->item[i].verdict);

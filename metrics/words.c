@@ -42,9 +42,9 @@ void tg_words_limits(double low, double high, char *out)
     if (isnan(low) && isnan(high))
         *out = '\0';
     else if (isnan(low))
-        snprintf(out, TG_WORDS, "at most %.6g", high);
+        snprintf(out, TG_WORDS, "at most %.5g", high);
     else if (isnan(high))
-        snprintf(out, TG_WORDS, "at least %.6g", low);
+        snprintf(out, TG_WORDS, "at least %.5g", low);
     else
-        snprintf(out, TG_WORDS, "%.6g to %.6g", low, high);
+        snprintf(out, TG_WORDS, "%.5g to %.5g", low, high);
 }

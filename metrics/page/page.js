@@ -24,37 +24,51 @@
     });
     const xy = (x, y) => x.map((value, i) => ({ x: value, y: y[i] })).filter((p) => p.x !== null && p.y !== null);
 
+    const series = (c, i) => {
+        const colour = hues[i % hues.length];
+        const measured = {
+            label: c.of, data: xy(c.x, c.y), borderColor: colour, backgroundColor: colour,
+            borderDash: dashes[i % dashes.length], borderWidth: 2, pointStyle: points[i % points.length],
+            pointRadius: (p) => (p.dataIndex % 8 === (i * 3) % 8 ? 4 : 0), tension: 0,
+        };
+        const expected = {
+            label: c.of + ", expected", data: xy(c.x, c.expected || []), borderColor: colour, borderDash: [1, 4],
+            borderWidth: 1.5, pointStyle: "line", pointRadius: 0, tension: 0,
+        };
+        return expected.data.length ? [measured, expected] : [measured];
+    };
+    const chooser = (places, figure, show) => {
+        const select = document.createElement("select");
+        select.setAttribute("aria-label", "place");
+        for (const place of places) select.add(new Option(place, place));
+        select.addEventListener("change", () => show(select.value));
+        figure.querySelector("figcaption").append(select);
+    };
+
     for (const canvas of document.querySelectorAll("canvas[data-measure]")) {
         const measure = canvas.dataset.measure;
-        const shown = curves.filter((c) => c.measure === measure);
-        if (!shown.length) continue;
-        const datasets = [];
-        shown.forEach((c, i) => {
-            const colour = hues[i % hues.length];
-            datasets.push({
-                label: c.of + ", " + c.where, data: xy(c.x, c.y), borderColor: colour, backgroundColor: colour,
-                borderDash: dashes[i % dashes.length], borderWidth: 2, pointStyle: points[i % points.length],
-                pointRadius: (p) => (p.dataIndex % 8 === (i * 3) % 8 ? 4 : 0), tension: 0,
-            });
-            if (c.expected && c.expected.some((v) => v !== null))
-                datasets.push({
-                    label: c.of + ", expected", data: xy(c.x, c.expected), borderColor: colour, borderDash: [1, 4],
-                    borderWidth: 1.5, pointStyle: "line", pointRadius: 0, tension: 0,
-                });
-        });
+        const all = curves.filter((c) => c.measure === measure);
+        const reconstructions = [...new Set(curves.map((c) => c.of))]; // each keeps its colour, dash and marker
+        const places = [...new Set(all.map((c) => c.where))];
+        const at = (place) =>
+            all.filter((c) => c.where === place).flatMap((c) => series(c, reconstructions.indexOf(c.of)));
         const names = axisTitles[measure] || ["", measure];
-        const y = titled(names[1], shown[0].y_unit);
+        const y = titled(names[1], all[0].y_unit);
         if (measure === "mtf") y.min = 0;
         if (measure === "nps") y.beginAtZero = true;
-        new Chart(canvas, {
+        const chart = new Chart(canvas, {
             type: "line",
-            data: { datasets },
+            data: { datasets: at(places[0]) },
             options: {
                 animation: false, maintainAspectRatio: false, parsing: false, normalized: true,
                 interaction: { mode: "nearest", axis: "x", intersect: false },
-                scales: { x: { ...titled(names[0], shown[0].x_unit), min: 0 }, y },
+                scales: { x: { ...titled(names[0], all[0].x_unit), min: 0 }, y },
                 plugins: { legend: { labels: { color: ink, usePointStyle: true, boxWidth: 34 } } },
             },
+        });
+        chooser(places, canvas.closest("figure"), (place) => {
+            chart.data.datasets = at(place);
+            chart.update();
         });
     }
 })();
