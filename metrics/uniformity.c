@@ -15,10 +15,12 @@ static const double depth_mm = 10;
 enum { PLACES = 4, FARTHEST_DEG = 44 /* that an edge region moves aside: it stays the nearest to its name */ };
 static const char *const place_names[PLACES] = {"right", "top", "left", "bottom"};
 
-/** Distance from a point to the outline of the body: the last pixel of the object along a ray. */
+/** Distance from the middle of the body to its outline; where it is no circle, to the last pixel of the object. */
 static double rim_mm(const tg_target *t, const double from_mm[2], double angle_rad)
 {
     const tg_grid *g = &t->grid;
+    double middle[2], radius;
+    if (tg_target_circle(t, t->body, middle, &radius)) return radius;
     const double step = 0.5 * fmin(g->step_mm[0], g->step_mm[1]);
     double rim = 0;
     for (double d = 0;; d += step) {

@@ -1,0 +1,156 @@
+/* The noise power spectrum of noise whose spectrum is known. */
+#include "metrics/measure.h"
+#include "near.h"
+#include "synthetic.h"
+
+static const Synthetic_solid body[] = {{"body", 0, 0, 60, 0}, {"rod", 30, 18, 6, 300}};
+static const Synthetic plain = {.pixels = 160,
+                                .step_mm = 0.8,
+                                .fwhm_mm = 1.6,
+                                .slices = 1,
+                                .sd = 10,
+                                .cutoff_per_mm = 0.6,
+                                .solid = body,
+                                .solids = 2,
+                                .seed = 5};
+
+/** Mean frequency and peak of a spectrum up to the pixels' Nyquist frequency, on a fine grid. */
+static void known(const Synthetic *s, double *mean, double *peak)
+{
+    enum { FINE = 20000 };
+    double above = 0, below = 0, best = 0;
+    for (int i = 0; i < FINE; i++) {
+        const double f = (i + 0.5) / FINE * 0.5 / s->step_mm, power = s->power ? s->power(f, s->cutoff_per_mm) : 1;
+        above += f * power;
+        below += power;
+        if (power > best) {
+            best = power;
+            *peak = f;
+        }
+    }
+    *mean = above / below;
+}
+
+/* nps-mean within 2 % of the truth over the draws of one slice and of four, white and as a Hann window leaves it; each
+ * inside its own 95 % as often as that lets expect (of 40: 95 % less four standard deviations of a share is 81 %); and
+ * the integral over the plane is the variance (Parseval) for noise that ends below Nyquist */
+START_TEST(mean_frequency)
+{
+    enum { DRAWS = 40 };
+    Synthetic s = plain;
+    Synthetic_case c;
+    tg_error e = {0};
+    double truth, peak, mean = 0, power = 0;
+    int covered = 0, peaks = 0, near = 0;
+    s.slices = _i % 2 ? 4 : 1;
+    s.power = _i / 2 ? synthetic_hann : NULL;
+    known(&s, &truth, &peak);
+    CK_OK(synthetic_make(&s, &c, &e));
+    for (uint64_t draw = 0; draw < DRAWS; draw++) {
+        tg_results all = {0};
+        CK_OK(synthetic_draw(&s, draw, &c, &e));
+        CK_OK(tg_measure_nps_mean(&c.target, 0, TG_BY_ANY, &all, &e));
+        CK_OK(tg_measure_nps_peak(&c.target, 0, TG_BY_ANY, &all, &e));
+        ck_assert_uint_eq(all.n_results, 2);
+        ck_assert_uint_eq(all.n_curves, 1);
+        mean += all.result[0].value / DRAWS;
+        covered += fabs(all.result[0].value - truth) <= all.result[0].uncertainty;
+        ck_assert(isnan(all.result[0].predicted)); /* nothing is known of how this image was made */
+        if (!isnan(all.result[1].value)) {
+            peaks++;
+            near += fabs(all.result[1].value - peak) <= all.result[1].uncertainty;
+        }
+        const tg_curve *p = &all.curve[0];
+        for (size_t k = 0; k < p->n; k++) {
+            const double low = k ? p->x[k - 1] : 0, high = k + 1 < p->n ? p->x[k + 1] : 1 / s.step_mm - p->x[k];
+            power += M_PI * p->x[k] * (high - low) * p->y[k] / DRAWS;
+        }
+        tg_results_free(&all);
+    }
+    CK_NEAR(mean, truth, 0.02, 0, "mean frequency of the spectrum that was put in");
+    ck_assert_int_ge(covered, (int)(0.81 * DRAWS));
+    if (s.power) {
+        ck_assert_int_ge(peaks, DRAWS - 8);
+        ck_assert_int_ge(near, (int)(0.81 * peaks));
+        CK_NEAR(power, 100, 0.03, 0, "variance");
+    } else {
+        ck_assert_int_le(peaks, 2); /* white noise has none */
+    }
+    synthetic_free(&c);
+}
+END_TEST
+
+/* the spectrum is the one that was put in: four slices averaged over draws, in every ring above a twentieth of the
+ * peak. A ring of 2 pi k samples in at least 7 independent squares, 3 slices and 40 draws scatters by 1 / sqrt(840 k);
+ * a ring of finite width and the taper's two neighbours see the curvature of S: allowed 8 % */
+START_TEST(shape)
+{
+    enum { DRAWS = 40 };
+    Synthetic s = plain;
+    Synthetic_case c;
+    tg_error e = {0};
+    double sum[64] = {0}, f[64] = {0}, scale = 0, best = 0;
+    size_t n = 0;
+    s.slices = 4;
+    s.power = synthetic_hann;
+    CK_OK(synthetic_make(&s, &c, &e));
+    for (uint64_t draw = 0; draw < DRAWS; draw++) {
+        tg_results all = {0};
+        CK_OK(synthetic_draw(&s, draw, &c, &e));
+        CK_OK(tg_measure_nps_mean(&c.target, 0, TG_BY_ANY, &all, &e));
+        n = all.curve[0].n;
+        ck_assert_uint_le(n, 64);
+        for (size_t k = 0; k < n; k++) {
+            sum[k] += all.curve[0].y[k] / DRAWS;
+            f[k] = all.curve[0].x[k];
+        }
+        tg_results_free(&all);
+    }
+    synthetic_free(&c);
+    for (int i = 0; i < 6000; i++) { /* S = scale f A^2 has the variance 100 over the plane */
+        const double at = (i + 0.5) * 1e-4;
+        scale += 2 * M_PI * at * synthetic_hann(at, s.cutoff_per_mm) * 1e-4 / 100;
+        best = fmax(best, synthetic_hann(at, s.cutoff_per_mm));
+    }
+    for (size_t k = 1; k < n; k++) {
+        const double want = synthetic_hann(f[k], s.cutoff_per_mm) / scale;
+        if (want > 0.05 * best / scale) CK_NEAR(sum[k], want, 0.08, 0, "spectrum that was put in");
+    }
+}
+END_TEST
+
+/* a body too small for the squares, and a solid that is no body: null with a why */
+START_TEST(nothing_to_be_had)
+{
+    static const Synthetic_solid small[] = {{"body", 0, 0, 25, 0}};
+    Synthetic s = plain;
+    Synthetic_case c;
+    tg_results all = {0};
+    tg_error e = {0};
+    CK_OK(synthetic_make(&s, &c, &e));
+    CK_OK(synthetic_draw(&s, 0, &c, &e));
+    CK_OK(tg_measure_nps_mean(&c.target, 1, TG_BY_ANY, &all, &e));
+    ck_assert_msg(strstr(all.result[0].why, "body"), "why: %s", all.result[0].why);
+    synthetic_free(&c);
+    s.solid = small;
+    s.solids = 1;
+    CK_OK(synthetic_make(&s, &c, &e));
+    CK_OK(synthetic_draw(&s, 0, &c, &e));
+    CK_OK(tg_measure_nps_peak(&c.target, 0, TG_BY_ANY, &all, &e));
+    ck_assert(isnan(all.result[1].value));
+    ck_assert_msg(strstr(all.result[1].why, "squares"), "why: %s", all.result[1].why);
+    ck_assert_uint_eq(all.n_curves + all.n_regions, 0);
+    synthetic_free(&c);
+    tg_results_free(&all);
+}
+END_TEST
+
+Suite *suite_nps(void);
+Suite *suite_nps(void)
+{
+    SUITE_BEGIN("nps", 60);
+    tcase_add_loop_test(tcase, mean_frequency, 0, 4);
+    tcase_add_test(tcase, shape);
+    tcase_add_test(tcase, nothing_to_be_had);
+    return suite;
+}
