@@ -19,7 +19,7 @@
     const titled = (text, unit) => ({
         type: "linear",
         title: { display: true, text: unit ? text + " / " + unit : text, color: ink },
-        ticks: { color: ink },
+        ticks: { color: ink, callback: (v) => String(Number(v.toPrecision(4))) },
         grid: { color: line },
     });
     const xy = (x, y) => x.map((value, i) => ({ x: value, y: y[i] })).filter((p) => p.x !== null && p.y !== null);
