@@ -73,7 +73,7 @@ static double robust_scatter(const double *d, size_t n, double *scratch)
 
 /** What the final distances say of the fit. @param d {n} their distances, NaN: outlier or not seen  @param a inverse */
 static void judge_fit(const tg_contour_model *m, const double (*point_mm)[2], const double *d, size_t n, size_t free,
-                      const double a[PARAMETERS * PARAMETERS], double *angle, tg_contour *o)
+                      const double a[PARAMETERS * PARAMETERS], double *scratch, tg_contour *o)
 {
     double sum = 0, neighbours = 0;
     size_t used = 0;
@@ -82,16 +82,19 @@ static void judge_fit(const tg_contour_model *m, const double (*point_mm)[2], co
         const double next = d[(i + 1) % n];
         sum += d[i] * d[i];
         if (!isnan(next)) neighbours += d[i] * next;
-        angle[used++] = atan2(point_mm[i][1] - o->centre_mm[1], point_mm[i][0] - o->centre_mm[0]);
+        scratch[used++] = atan2(point_mm[i][1] - o->centre_mm[1], point_mm[i][0] - o->centre_mm[0]);
     }
-    gsl_sort(angle, 1, used);
+    gsl_sort(scratch, 1, used);
     o->gap_rad = 2 * M_PI;
     if (used) {
-        o->gap_rad = angle[0] + 2 * M_PI - angle[used - 1];
+        o->gap_rad = scratch[0] + 2 * M_PI - scratch[used - 1];
         for (size_t i = 1; i < used; i++)
-            o->gap_rad = fmax(o->gap_rad, angle[i] - angle[i - 1]);
+            o->gap_rad = fmax(o->gap_rad, scratch[i] - scratch[i - 1]);
     }
     o->seen = (double)used / (double)n;
+    for (size_t i = 0; i < n; i++)
+        scratch[i] = d[(i + 1) % n] - d[i];
+    o->jitter_mm = robust_scatter(scratch, n, scratch) / M_SQRT2;
     /* neighbouring directions hang together: as in an autoregressive series, their number counts less */
     const double hang = sum > 0 ? fmin(fmax(neighbours / sum, 0), 0.9) : 0, loss = (1 + hang) / (1 - hang);
     o->dof = fmax(((double)used - (double)free) / loss, 1);

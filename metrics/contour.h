@@ -25,9 +25,10 @@ typedef struct {
     double centre_u_mm, turn_u_rad, scale_u; /* standard uncertainties, from the scatter of the crossings */
     double dof;                              /* behind them */
     double scatter_mm;                       /* SD of the crossings about the fit, outliers apart */
-    double inside, outside;                  /* levels beside the outline, median over the directions */
-    double seen;                             /* part of the directions in which the outline was found */
-    double gap_rad;                          /* widest run of directions without */
+    double jitter_mm;       /* the same from neighbouring directions alone: noise, without what the shape is off by */
+    double inside, outside; /* levels beside the outline, median over the directions */
+    double seen;            /* part of the directions in which the outline was found */
+    double gap_rad;         /* widest run of directions without */
 } tg_contour;
 
 /** Fit the shape of a section to points of the image: centre, scale and turn (where the model turns), by Gauss-Newton

@@ -119,10 +119,11 @@ void tg_result_budget(tg_result *r, const char *source, double u, double dof)
 void tg_result_combine(tg_result *r)
 {
     double dof;
-    double sum = variance(r, NULL, &dof);
-    r->uncertainty = expanded(sum, dof);
-    sum = variance(r, "noise", &dof);
+    double sum = variance(r, "noise", &dof);
     r->uncertainty_noise = expanded(sum, dof);
+    sum = variance(r, NULL, &dof);
+    /* a second line may raise the degrees of freedom, and so lower k: the whole is still no less than its part */
+    r->uncertainty = fmax(expanded(sum, dof), r->uncertainty_noise);
 }
 
 void tg_result_null(tg_result *r, const char *format, ...)

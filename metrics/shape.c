@@ -87,12 +87,11 @@ static tg_code find(const tg_target *t, int solid, tg_contour *o, double centre_
     if (*r->why) goto done;
     *o = (tg_contour){.centre_mm = {centre_mm[0], centre_mm[1]}, .scale = 1};
     TG_TRY(tg_contour_find(&m, o, &found, e));
-    const double step = fabs(o->inside - o->outside), noise = t->noise.sd / sqrt((double)t->n);
     const tg_image *image = t->image;
     if (!found || o->seen < 0.75)
         tg_result_null(r, "its outline is not in the image as a whole, or does not stand out");
-    else if (step < 5 * noise)
-        tg_result_null(r, "its step of %.3g is less than five times the noise of %.3g", step, noise);
+    else if (o->jitter_mm > 0.2 * t->spread_mm) /* the noise of a profile is more than a fifth of the step */
+        tg_result_null(r, "its outline is lost in noise: it strays by %.2g mm", o->jitter_mm);
     else if (fmin(o->inside, o->outside) <= image->least || fmax(o->inside, o->outside) >= image->most)
         tg_result_null(r, "the values beside its outline are clipped");
 done:
@@ -115,6 +114,8 @@ tg_code tg_measure_diameter(const tg_target *t, int solid, tg_by by, tg_results 
     r->value = 2 * radius * o.scale + bent;
     tg_result_budget(r, "noise", 2 * radius * o.scale_u, o.dof);
     tg_result_budget(r, "method", bent / sqrt(3), INFINITY);
+    /* what sampling leaves: a twentieth of a pixel at most on each side */
+    tg_result_budget(r, "pixels", 0.1 * t->grid.step_mm[0] / sqrt(3), INFINITY);
     tg_result_combine(r);
 done:
     return code;
