@@ -159,6 +159,7 @@ static void add_equiangular(const tg_backprojector *b, const double turn[2], con
         weight[i] = (float)(r2 / l2);
     }
     for (int i = from; i < to; i++)
+        /* cppcheck-suppress uninitvar ; the loop above has filled what this one reads */
         sum[i] += weight[i] * sample(row, channel[i], last);
 }
 

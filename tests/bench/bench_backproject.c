@@ -125,5 +125,5 @@ int main(void)
     if (code == TG_OK) code = bench(TG_FAN_EQUIANGULAR, "fan-equiangular", adds, bytes, &e);
     if (code == TG_OK) code = bench(TG_FAN_EQUISPACED, "fan-equispaced", adds, bytes, &e);
     if (code != TG_OK) fprintf(stderr, "bench: %s\n", e.message[0].what);
-    return code;
+    return (int)code;
 }
