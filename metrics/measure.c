@@ -34,16 +34,11 @@ static bool point_or_edge(const tg_target *t, int solid)
     return around == TG_NO_SOLID || t->phantom->solid[around].material != t->phantom->solid[solid].material;
 }
 
+/** A circle whose outline can be told from its spread. */
 static bool round_outline(const tg_target *t, int solid)
 {
     double centre_mm[2], radius_mm;
-    return tg_target_circle(t, solid, centre_mm, &radius_mm) && radius_mm >= 2 * t->spread_mm;
-}
-
-static bool round_any(const tg_target *t, int solid)
-{
-    double centre_mm[2], radius_mm;
-    return tg_target_circle(t, solid, centre_mm, &radius_mm);
+    return tg_target_circle(t, solid, centre_mm, &radius_mm) && radius_mm >= 4 * t->spread_mm;
 }
 
 const tg_measure tg_measures[] = {
@@ -60,7 +55,7 @@ const tg_measure tg_measures[] = {
     {"mtf10", "frequency", "frequency where the modulation falls to a tenth", false, true, point_or_edge,
      tg_measure_mtf10},
     {"diameter", "mm", "diameter at half of the step at the outline", false, false, round_outline, tg_measure_diameter},
-    {"position", "mm", "distance of a solid from its place", true, false, round_any, tg_measure_position},
+    {"position", "mm", "distance of a solid from its place", true, false, round_outline, tg_measure_position},
     {0},
 };
 
