@@ -197,7 +197,7 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         /* not to the centre, where the pixels are too few to stand for an integral over directions */
         const double reach = fmin(most_reach * width, 0.9 * radius_mm), play = reach + 2 * width + 2 * step;
         tg_spread_free(&s);
-        TG_TRY(tg_spread_create(radius_mm - play, radius_mm + play, step, &s, e));
+        TG_TRY(tg_spread_create(&t->grid, radius_mm - play, radius_mm + play, &s, e));
         s.width_mm = width;
         s.kernel = kernel;
         s.radius_mm = radius_mm;

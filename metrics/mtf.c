@@ -45,12 +45,12 @@ void tg_mtf_refuse(tg_mtf *out, const char *format, ...)
 
 /* ---- the pixels ---- */
 
-tg_code tg_spread_create(double least_mm, double most_mm, double step_mm, tg_spread *s, tg_error *e)
+tg_code tg_spread_create(const tg_grid *g, double least_mm, double most_mm, tg_spread *s, tg_error *e)
 {
     tg_code code = TG_OK;
+    const double step_mm = fmin(g->step_mm[0], g->step_mm[1]), a = fmax(least_mm, 0) / step_mm, b = most_mm / step_mm;
     /* the area in pixels, and those that its outlines cut */
-    const double a = fmax(least_mm, 0) / step_mm, b = most_mm / step_mm;
-    const size_t room = (size_t)(M_PI * (b * b - a * a) + 8 * (a + b) + 64);
+    const size_t room = (size_t)fmin((double)tg_grid_slice(g), M_PI * (b * b - a * a) + 8 * (a + b) + 64);
     *s = (tg_spread){.room = room, .least_mm = a * step_mm, .knot_mm = step_mm / 256};
     s->knots = (size_t)ceil((b - a) * 256) + 2;
     TG_TRY(TG_NEW(s->profile, s->knots, e));

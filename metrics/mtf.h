@@ -71,8 +71,8 @@ typedef struct tg_spread {
     double size_mm;
 } tg_spread;
 
-/** Room for the pixels at distances from least_mm to most_mm; nothing in it yet.  @param step_mm  of the pixels */
-tg_code tg_spread_create(double least_mm, double most_mm, double step_mm, tg_spread *s, tg_error *e);
+/** Room for the pixels of a grid at distances from least_mm to most_mm; nothing in it yet. */
+tg_code tg_spread_create(const tg_grid *g, double least_mm, double most_mm, tg_spread *s, tg_error *e);
 void tg_spread_free(tg_spread *s);
 
 /** Fit and subtract the background of all pixels gathered. @return false: too few pixels for it */

@@ -129,7 +129,7 @@ tg_code tg_mtf_by_point(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
     /* the spread at the body's edge is only a first guess of its width here */
     for (int pass = 0; pass < 3; pass++) {
         tg_spread_free(&s);
-        TG_TRY(tg_spread_create(0, most_reach * width, step, &s, e));
+        TG_TRY(tg_spread_create(&t->grid, 0, most_reach * width, &s, e));
         s.width_mm = width;
         s.kernel = kernel;
         s.size_mm = 2 * radius_mm;
