@@ -295,8 +295,8 @@ static void doubt(const agreement *a, const bool *may, size_t best, int order, d
         const double unlike = 1 - a->own[(size_t)fabs(apart)] / a->own[0];
         const double lead = a->cross[best] - a->cross[i];
         if (lead < fmax(3 * u * sqrt(2 * unlike), 0.3 * gain * a->own[0] * unlike)) {
-            snprintf(lost, 200, "turns of %.4g and %.4g degrees fit equally well", (double)best * 360 / ANGLES,
-                     (double)i * 360 / ANGLES);
+            snprintf(lost, 200, "two turns of the phantom, %.4g degrees apart, fit equally well",
+                     fabs(apart) * 360 / ANGLES);
             return;
         }
     }
