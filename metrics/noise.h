@@ -17,9 +17,9 @@ void tg_noise_free(tg_noise *noise);
  *  within the limits of the file's pixel type.  @param index  {*n} flat indices into a slice, tg_free */
 tg_code tg_noise_pixels(const tg_target *t, size_t **index, size_t *n, tg_error *e);
 
-/** Variance of the line integrals through the rotation axis that the phantom and the image's photons let expect, mean
- *  over directions: exp(p) / N. NaN where the image does not tell energy and photons. */
-double tg_noise_line_variance(const tg_target *t);
+/** Variance of the line integrals through a point of the image that the phantom and the image's photons let expect,
+ * mean over directions: exp(p) / N. NaN where the image does not tell energy and photons. */
+double tg_noise_line_variance(const tg_target *t, const double at_mm[2]);
 
 /** Variance of a weighted sum of pixels for noise of unit SD, correlations included:
  *  sum_ij w_i w_j C(i - j).  @param index {n} flat indices into a slice of width nx  @param weight {n}, NULL: 1/n each

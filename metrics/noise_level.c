@@ -8,7 +8,7 @@
 #include <math.h>
 #include <stdio.h>
 
-double tg_noise_line_variance(const tg_target *t)
+double tg_noise_line_variance(const tg_target *t, const double at_mm[2])
 {
     enum { DIRECTIONS = 90 };
     const tg_phantom *p = t->phantom;
@@ -17,7 +17,7 @@ double tg_noise_line_variance(const tg_target *t)
     double sum = NAN, at[2];
     if (mu && path_mm && facts->photons_per_ray.v > 0 && isfinite(facts->energy_kev.v) &&
         tg_phantom_mu(p, facts->energy_kev.v, mu, NULL) == TG_OK) {
-        tg_target_to_phantom(t, (const double[2]){0, 0}, at);
+        tg_target_to_phantom(t, at_mm, at);
         sum = 0;
         for (int i = 0; i < DIRECTIONS; i++) {
             const double angle = M_PI * i / DIRECTIONS;
@@ -55,8 +55,8 @@ tg_code tg_measure_noise(const tg_target *t, int solid, tg_by by, tg_results *ou
     (void)by;
     TG_TRY(tg_place_result(t, "noise", t->phantom->solid[solid].name.v, tg_unit_text(t->unit), out, &r, e));
     if (r->why[0]) goto done;
-    r->predicted = tg_theory_sd(t->image, tg_noise_line_variance(t));
     TG_TRY(place_noise(t, solid, &place, e));
+    r->predicted = tg_theory_sd(t->image, tg_noise_line_variance(t, place.region.centre_mm));
     if (place.why[0]) {
         tg_result_null(r, "%s", place.why);
         goto done;

@@ -340,11 +340,22 @@ static double expected(const tg_target *t, const spectrum *s, bool peak, double 
     return peak ? f[largest(theory, FINE)] : mean_frequency(f, theory, FINE, s->nyquist_per_mm, NULL);
 }
 
+static void middle_of(const tg_target *t, const spectrum *s, size_t square, double mm[2])
+{
+    const double last = 0.5 * ((double)s->side - 1);
+    mm[0] = tg_grid_mm(&t->grid, 0, (double)(s->corner[square] % t->grid.n[0]) + last);
+    mm[1] = tg_grid_mm(&t->grid, 1, (double)(s->corner[square] / t->grid.n[0]) + last);
+}
+
 static tg_code add_curve(const tg_target *t, const char *name, const spectrum *s, tg_results *out, tg_error *e)
 {
     for (size_t i = 0; i < out->n_curves; i++) /* both figures stand on the same curve */
         if (!strcmp(out->curve[i].measure, "nps") && !strcmp(out->curve[i].where, name)) return TG_OK;
-    const double variance = tg_noise_line_variance(t);
+    double variance = 0, mm[2]; /* the middle of a body is noisier than its edge: mean over the squares */
+    for (size_t q = 0; q < s->n; q++) {
+        middle_of(t, s, q, mm);
+        variance += tg_noise_line_variance(t, mm) / (double)s->n;
+    }
     const bool known = isfinite(tg_theory_nps(t->image, variance, s->f[0]));
     tg_curve *c = tg_results_add_curve(out, "nps", name, "1/mm", t->unit == TG_HU ? "HU^2 mm^2" : "", s->bins, known);
     if (!c) return tg_no_memory(e, s->bins, 3 * sizeof(double));
@@ -359,13 +370,10 @@ static tg_code add_curve(const tg_target *t, const char *name, const spectrum *s
 static tg_code add_squares(const tg_target *t, const char *name, const spectrum *s, tg_results *out, tg_error *e)
 {
     tg_code code = TG_OK;
-    const double last = 0.5 * ((double)s->side - 1);
+    const double half = 0.5 * (double)s->side;
     for (size_t q = 0; q < s->n && code == TG_OK; q++) {
-        const double x = (double)(s->corner[q] % t->grid.n[0]), y = (double)(s->corner[q] / t->grid.n[0]);
-        tg_region r = {
-            .outline = TG_BOX,
-            .centre_mm = {tg_grid_mm(&t->grid, 0, x + last), tg_grid_mm(&t->grid, 1, y + last)},
-            .half_mm = {0.5 * (double)s->side * t->grid.step_mm[0], 0.5 * (double)s->side * t->grid.step_mm[1]}};
+        tg_region r = {.outline = TG_BOX, .half_mm = {half * t->grid.step_mm[0], half * t->grid.step_mm[1]}};
+        middle_of(t, s, q, r.centre_mm);
         snprintf(r.label, sizeof r.label, "%.50s nps", name);
         code = tg_results_add_region(out, &r, e);
     }
