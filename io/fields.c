@@ -57,16 +57,16 @@ static void append(char out[256], const char *format, ...)
     va_end(args);
 }
 
-static const double ENDLESS = 1e300, MOST_WHOLE = 0x1p53; /* limits that large are none */
+static const double MOST_WHOLE = 0x1p53; /* of whole numbers; a limit that large is none */
 
 static bool has_low(const tg_field *f)
 {
-    return (f->low != 0 || f->high != 0) && f->low > -ENDLESS;
+    return (f->low != 0 || f->high != 0) && f->low > -DBL_MAX;
 }
 
 static bool has_high(const tg_field *f)
 {
-    return (f->low != 0 || f->high != 0) && f->high < (f->kind == TG_INTEGER ? MOST_WHOLE : ENDLESS);
+    return (f->low != 0 || f->high != 0) && f->high < (f->kind == TG_INTEGER ? MOST_WHOLE : DBL_MAX);
 }
 
 static bool in_range(const tg_field *f, double v)

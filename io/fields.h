@@ -51,11 +51,17 @@ typedef struct tg_field {
     const char *words;           /* "cylinder sphere", for TG_CHOICE and the special words of TG_NUMBER */
     const char *standard;        /* the default as one would write it; NULL: none (NaN, NULL, or an empty list) */
     const char *what;            /* one sentence without a full stop, for --help and error messages; never NULL */
-    double low, high;            /* inclusive; both 0: any. Lists and vectors: range of each component */
+    double low, high;            /* inclusive; both 0: any; +-DBL_MAX: no such limit. Of each component of a vector */
     const struct tg_field *item; /* TG_GROUP, TG_LIST */
     size_t item_size;            /* TG_LIST */
     bool required;
 } tg_field;
+
+/** A row of a table for a value that is a member of a struct; the rest as designated initialisers: .unit = "mm". */
+#define TG_ROW(type, key_, kind_, member, ...) \
+    { \
+        .key = (key_), .kind = (kind_), .at = offsetof(type, member), __VA_ARGS__ \
+    }
 
 /** The first row of a table: stores the line of a mapping in the int member `line` of a struct. */
 #define TG_LINE_AT(type) \

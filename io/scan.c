@@ -73,25 +73,19 @@ double tg_scan_field_radius_mm(const tg_scan *scan)
     return scan->source_axis_mm * sin(tg_scan_fan_angle(scan, reach));
 }
 
-#define FACT(key, kind, member, unit, what) \
-    { \
-        key, kind, offsetof(tg_facts, member), unit, NULL, NULL, what, 0, 0, NULL, 0, false \
-    }
-#define POSITIVE(key, member, unit, what) \
-    { \
-        key, TG_NUMBER, offsetof(tg_facts, member), unit, NULL, NULL, what, TG_ABOVE_ZERO, 1e300, NULL, 0, false \
-    }
+#define POSITIVE(key, member, ...) \
+    TG_ROW(tg_facts, key, TG_NUMBER, member, .low = TG_ABOVE_ZERO, .high = DBL_MAX, __VA_ARGS__)
 
 const tg_field tg_fact_fields[] = {
-    POSITIVE("TUBEKV", tube_kv, "kV", "tube voltage"),
-    POSITIVE("ENERGY", energy_kev, "keV", "photon energy of a monochromatic beam"),
-    POSITIVE("PHOTONS", photons_per_ray, NULL, "photons per channel and view without object"),
-    POSITIVE("APERTURE", aperture_mm, "mm", "width of a channel's aperture, at the axis"),
-    POSITIVE("FOCALSPT", focal_spot_mm, "mm", "width of the focal spot"),
-    POSITIVE("MUWATER", mu_water_per_mm, "1/mm", "attenuation of water, makes HU"),
-    FACT("SEED", TG_INTEGER, seed, NULL, "seed of the noise"),
-    FACT("PHANTOM", TG_TEXT, phantom, NULL, "phantom that was scanned"),
-    FACT("SCANNER", TG_TEXT, scanner, NULL, "scanner that scanned it"),
+    POSITIVE("TUBEKV", tube_kv, .unit = "kV", .what = "tube voltage"),
+    POSITIVE("ENERGY", energy_kev, .unit = "keV", .what = "photon energy of a monochromatic beam"),
+    POSITIVE("PHOTONS", photons_per_ray, .what = "photons per channel and view without object"),
+    POSITIVE("APERTURE", aperture_mm, .unit = "mm", .what = "width of a channel's aperture, at the axis"),
+    POSITIVE("FOCALSPT", focal_spot_mm, .unit = "mm", .what = "width of the focal spot"),
+    POSITIVE("MUWATER", mu_water_per_mm, .unit = "1/mm", .what = "attenuation of water, makes HU"),
+    TG_ROW(tg_facts, "SEED", TG_INTEGER, seed, .what = "seed of the noise"),
+    TG_ROW(tg_facts, "PHANTOM", TG_TEXT, phantom, .what = "phantom that was scanned"),
+    TG_ROW(tg_facts, "SCANNER", TG_TEXT, scanner, .what = "scanner that scanned it"),
     {0},
 };
 

@@ -9,32 +9,27 @@
 #include <stdio.h>
 #include <string.h>
 
-#define ROW(type, key_, kind_, member, ...) \
-    { \
-        .key = (key_), .kind = (kind_), .at = offsetof(type, member), __VA_ARGS__ \
-    }
-
 static const tg_field own_recipe_fields[] = {
     TG_LINE_AT(tg_recipe),
-    ROW(tg_recipe, "name", TG_TEXT, name, .what = "its name in tables and of its files", .required = true),
-    ROW(tg_recipe, "specification", TG_PATH, specification, .what = "the specification it answers to"),
+    TG_ROW(tg_recipe, "name", TG_TEXT, name, .what = "its name in tables and of its files", .required = true),
+    TG_ROW(tg_recipe, "specification", TG_PATH, specification, .what = "the specification it answers to"),
 };
 
 static const tg_field own_fields[] = {
-    ROW(tg_job, "job", TG_TEXT, name, .what = "its name", .required = true),
-    ROW(tg_job, "phantom", TG_PATH, phantom, .what = "description of what was scanned", .required = true),
-    ROW(tg_job, "scan", TG_PATH, scan, .what = "the scan, a FITS file"),
-    ROW(tg_job, "scanner", TG_PATH, scanner, .what = "description of the scanner to simulate with"),
-    ROW(tg_job, "photons", TG_NUMBER, photons, .low = TG_ABOVE_ZERO, .high = 1e15,
-        .what = "photons per channel and view without object, instead of the scanner's"),
-    ROW(tg_job, "seed", TG_INTEGER, seed, .low = 0, .high = 9007199254740992,
-        .what = "seed of the noise, instead of the scanner's"),
-    ROW(tg_job, "water", TG_TEXT, water, .what = "solid whose mean defines CT number 0"),
-    ROW(tg_job, "specification", TG_PATH, specification,
-        .what = "the specification of every reconstruction without its own"),
-    ROW(tg_job, "frequency-unit", TG_CHOICE, frequency_unit, .words = "lp/cm lp/mm", .standard = "lp/cm",
-        .what = "unit of spatial frequencies"),
-    ROW(tg_job, "note", TG_TEXT, note, .what = "words for the page: who, what for"),
+    TG_ROW(tg_job, "job", TG_TEXT, name, .what = "its name", .required = true),
+    TG_ROW(tg_job, "phantom", TG_PATH, phantom, .what = "description of what was scanned", .required = true),
+    TG_ROW(tg_job, "scan", TG_PATH, scan, .what = "the scan, a FITS file"),
+    TG_ROW(tg_job, "scanner", TG_PATH, scanner, .what = "description of the scanner to simulate with"),
+    TG_ROW(tg_job, "photons", TG_NUMBER, photons, .low = TG_ABOVE_ZERO, .high = 1e15,
+           .what = "photons per channel and view without object, instead of the scanner's"),
+    TG_ROW(tg_job, "seed", TG_INTEGER, seed, .low = 0, .high = 9007199254740992,
+           .what = "seed of the noise, instead of the scanner's"),
+    TG_ROW(tg_job, "water", TG_TEXT, water, .what = "solid whose mean defines CT number 0"),
+    TG_ROW(tg_job, "specification", TG_PATH, specification,
+           .what = "the specification of every reconstruction without its own"),
+    TG_ROW(tg_job, "frequency-unit", TG_CHOICE, frequency_unit, .words = "lp/cm lp/mm", .standard = "lp/cm",
+           .what = "unit of spatial frequencies"),
+    TG_ROW(tg_job, "note", TG_TEXT, note, .what = "words for the page: who, what for"),
 };
 
 enum { OWN = sizeof own_fields / sizeof *own_fields, MOST_ROWS = 48 };
@@ -53,8 +48,8 @@ static void make_tables(tables *t)
         if (f->kind != TG_LINE) t->recipe[n++] = *f;
     memcpy(t->job, own_fields, sizeof own_fields);
     t->job[OWN] =
-        (tg_field)ROW(tg_job, "reconstructions", TG_LIST, reconstructions, .item = t->recipe,
-                      .item_size = sizeof(tg_recipe), .what = "every reconstruction to make", .required = true);
+        (tg_field)TG_ROW(tg_job, "reconstructions", TG_LIST, reconstructions, .item = t->recipe,
+                         .item_size = sizeof(tg_recipe), .what = "every reconstruction to make", .required = true);
 }
 
 /** Keep the first failure, go on looking. */

@@ -12,21 +12,11 @@ typedef struct {
 } measure_options;
 
 static const tg_field fields[] = {
-    {.key = "phantom",
-     .kind = TG_PATH,
-     .at = offsetof(measure_options, phantom),
-     .what = "description of what the images show",
-     .required = true},
-    {.key = "spec",
-     .kind = TG_PATH,
-     .at = offsetof(measure_options, spec),
-     .what = "specification to judge by; without it nothing is judged"},
-    {.key = "unit",
-     .kind = TG_CHOICE,
-     .at = offsetof(measure_options, unit),
-     .words = "lp/cm lp/mm",
-     .standard = "lp/cm",
-     .what = "unit of spatial frequencies"},
+    TG_ROW(measure_options, "phantom", TG_PATH, phantom, .what = "description of what the images show",
+           .required = true),
+    TG_ROW(measure_options, "spec", TG_PATH, spec, .what = "specification to judge by; without it nothing is judged"),
+    TG_ROW(measure_options, "unit", TG_CHOICE, unit, .words = "lp/cm lp/mm", .standard = "lp/cm",
+           .what = "unit of spatial frequencies"),
     {0},
 };
 

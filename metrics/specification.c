@@ -9,46 +9,41 @@
 #include <stdio.h>
 #include <string.h>
 
-#define ROW(type, key_, kind_, member, ...) \
-    { \
-        .key = (key_), .kind = (kind_), .at = offsetof(type, member), __VA_ARGS__ \
-    }
-
 static const tg_field condition_fields[] = {
-    ROW(tg_conditions, "kernel", TG_TEXT, kernel, .what = "kernel of the reconstruction, NAME or NAME@CUTOFF"),
-    ROW(tg_conditions, "method", TG_TEXT, method, .what = "method of the reconstruction"),
-    ROW(tg_conditions, "kv", TG_NUMBER, kv, .unit = "kV", .low = TG_ABOVE_ZERO, .high = 1e4, .what = "tube voltage"),
-    ROW(tg_conditions, "energy", TG_NUMBER, energy, .unit = "keV", .low = TG_ABOVE_ZERO, .high = 1e4,
-        .what = "photon energy of a monochromatic beam"),
-    ROW(tg_conditions, "slice", TG_NUMBER, slice, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e4,
-        .what = "slice thickness"),
+    TG_ROW(tg_conditions, "kernel", TG_TEXT, kernel, .what = "kernel of the reconstruction, NAME or NAME@CUTOFF"),
+    TG_ROW(tg_conditions, "method", TG_TEXT, method, .what = "method of the reconstruction"),
+    TG_ROW(tg_conditions, "kv", TG_NUMBER, kv, .unit = "kV", .low = TG_ABOVE_ZERO, .high = 1e4, .what = "tube voltage"),
+    TG_ROW(tg_conditions, "energy", TG_NUMBER, energy, .unit = "keV", .low = TG_ABOVE_ZERO, .high = 1e4,
+           .what = "photon energy of a monochromatic beam"),
+    TG_ROW(tg_conditions, "slice", TG_NUMBER, slice, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e4,
+           .what = "slice thickness"),
     {0},
 };
 
 static const tg_field check_fields[] = {
     TG_LINE_AT(tg_check),
-    ROW(tg_check, "measure", TG_TEXT, measure, .what = "what is measured", .required = true),
-    ROW(tg_check, "in", TG_TEXT, in, .what = "the solid it is measured in"),
-    ROW(tg_check, "at", TG_TEXT, at, .what = "the solid it is measured at"),
-    ROW(tg_check, "by", TG_CHOICE, by, .words = TG_BY_WORDS, .what = "how a resolution is measured"),
-    ROW(tg_check, "nominal", TG_NUMBER, nominal, .words = "computed",
-        .what = "the right value; computed: from composition, beam and theory"),
-    ROW(tg_check, "tolerance", TG_NUMBER, tolerance, .low = TG_ABOVE_ZERO, .high = DBL_MAX,
-        .what = "most that the value may be off, either way"),
-    ROW(tg_check, "low", TG_NUMBER, low, .what = "least that the value may be"),
-    ROW(tg_check, "high", TG_NUMBER, high, .what = "most that the value may be"),
-    ROW(tg_check, "source", TG_TEXT, source, .what = "where the figure comes from"),
+    TG_ROW(tg_check, "measure", TG_TEXT, measure, .what = "what is measured", .required = true),
+    TG_ROW(tg_check, "in", TG_TEXT, in, .what = "the solid it is measured in"),
+    TG_ROW(tg_check, "at", TG_TEXT, at, .what = "the solid it is measured at"),
+    TG_ROW(tg_check, "by", TG_CHOICE, by, .words = TG_BY_WORDS, .what = "how a resolution is measured"),
+    TG_ROW(tg_check, "nominal", TG_NUMBER, nominal, .words = "computed",
+           .what = "the right value; computed: from composition, beam and theory"),
+    TG_ROW(tg_check, "tolerance", TG_NUMBER, tolerance, .low = TG_ABOVE_ZERO, .high = DBL_MAX,
+           .what = "most that the value may be off, either way"),
+    TG_ROW(tg_check, "low", TG_NUMBER, low, .what = "least that the value may be"),
+    TG_ROW(tg_check, "high", TG_NUMBER, high, .what = "most that the value may be"),
+    TG_ROW(tg_check, "source", TG_TEXT, source, .what = "where the figure comes from"),
     {0},
 };
 
 static const tg_field specification_fields[] = {
-    ROW(tg_specification, "specification", TG_TEXT, name, .what = "its name", .required = true),
-    ROW(tg_specification, "conditions", TG_GROUP, conditions, .item = condition_fields,
-        .what = "what the image must be for the specification to speak of it"),
-    ROW(tg_specification, "unit", TG_CHOICE, unit, .words = "HU 1/mm", .standard = "HU",
-        .what = "unit of the limits on CT numbers, uniformity, cupping and noise"),
-    ROW(tg_specification, "checks", TG_LIST, checks, .item = check_fields, .item_size = sizeof(tg_check),
-        .what = "what must hold", .required = true),
+    TG_ROW(tg_specification, "specification", TG_TEXT, name, .what = "its name", .required = true),
+    TG_ROW(tg_specification, "conditions", TG_GROUP, conditions, .item = condition_fields,
+           .what = "what the image must be for the specification to speak of it"),
+    TG_ROW(tg_specification, "unit", TG_CHOICE, unit, .words = "HU 1/mm", .standard = "HU",
+           .what = "unit of the limits on CT numbers, uniformity, cupping and noise"),
+    TG_ROW(tg_specification, "checks", TG_LIST, checks, .item = check_fields, .item_size = sizeof(tg_check),
+           .what = "what must hold", .required = true),
     {0},
 };
 

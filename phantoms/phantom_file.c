@@ -28,53 +28,48 @@ typedef struct {
     tg_list materials, solids;
 } phantom_keys;
 
-#define ROW(type, key_, kind_, member, ...) \
-    { \
-        .key = (key_), .kind = (kind_), .at = offsetof(type, member), __VA_ARGS__ \
-    }
-
 static const tg_field material_fields[] = {
     TG_LINE_AT(material_keys),
-    ROW(material_keys, "name", TG_TEXT, name, .what = "name of the material", .required = true),
-    ROW(material_keys, "formula", TG_TEXT, formula, .what = "chemical formula, with density"),
-    ROW(material_keys, "compound", TG_TEXT, compound, .what = "name in the NIST list of compounds"),
-    ROW(material_keys, "density", TG_NUMBER, density, .unit = "g/cm3", .what = "density; a compound has its own",
-        .low = 1e-9, .high = 30),
-    ROW(material_keys, "mu", TG_NUMBER, mu, .unit = "1/mm", .what = "attenuation, the same at every energy", .low = 0,
-        .high = 1000),
-    ROW(material_keys, "hu", TG_NUMBER, hu, .unit = "HU", .what = "CT number, the same at every energy", .low = -1000,
-        .high = 100000),
+    TG_ROW(material_keys, "name", TG_TEXT, name, .what = "name of the material", .required = true),
+    TG_ROW(material_keys, "formula", TG_TEXT, formula, .what = "chemical formula, with density"),
+    TG_ROW(material_keys, "compound", TG_TEXT, compound, .what = "name in the NIST list of compounds"),
+    TG_ROW(material_keys, "density", TG_NUMBER, density, .unit = "g/cm3", .what = "density; a compound has its own",
+           .low = 1e-9, .high = 30),
+    TG_ROW(material_keys, "mu", TG_NUMBER, mu, .unit = "1/mm", .what = "attenuation, the same at every energy",
+           .low = 0, .high = 1000),
+    TG_ROW(material_keys, "hu", TG_NUMBER, hu, .unit = "HU", .what = "CT number, the same at every energy",
+           .low = -1000, .high = 100000),
     {0},
 };
 
 static const tg_field solid_fields[] = {
     TG_LINE_AT(solid_keys),
-    ROW(solid_keys, "name", TG_TEXT, name, .what = "name of the solid", .required = true),
-    ROW(solid_keys, "shape", TG_CHOICE, shape, .words = TG_SHAPES, .what = "form of the solid", .required = true),
-    ROW(solid_keys, "material", TG_TEXT, material, .what = "name of its material", .required = true),
-    ROW(solid_keys, "centre", TG_VECTOR3, centre, .unit = "mm", .standard = "0,0,0", .what = "its middle",
-        .low = -MOST_MM, .high = MOST_MM),
-    ROW(solid_keys, "axis", TG_VECTOR3, axis, .standard = "0,0,1", .what = "direction of its own z axis",
-        .low = -MOST_MM, .high = MOST_MM),
-    ROW(solid_keys, "turn", TG_NUMBER, turn, .unit = "degrees", .standard = "0",
-        .what = "turn about its own z axis, counter-clockwise", .low = -360, .high = 360),
-    ROW(solid_keys, "radius", TG_NUMBER, radius, .unit = "mm", .what = "radius; of a cone at its lower end",
-        .low = LEAST_MM, .high = MOST_MM),
-    ROW(solid_keys, "top-radius", TG_NUMBER, top_radius, .unit = "mm", .what = "radius of a cone at its upper end",
-        .low = 0, .high = MOST_MM),
-    ROW(solid_keys, "length", TG_NUMBER, length, .unit = "mm", .what = "full length along its own z axis",
-        .low = LEAST_MM, .high = MOST_MM),
-    ROW(solid_keys, "size", TG_VECTOR3, size, .unit = "mm", .what = "full lengths along its own x, y and z axes",
-        .low = LEAST_MM, .high = MOST_MM),
+    TG_ROW(solid_keys, "name", TG_TEXT, name, .what = "name of the solid", .required = true),
+    TG_ROW(solid_keys, "shape", TG_CHOICE, shape, .words = TG_SHAPES, .what = "form of the solid", .required = true),
+    TG_ROW(solid_keys, "material", TG_TEXT, material, .what = "name of its material", .required = true),
+    TG_ROW(solid_keys, "centre", TG_VECTOR3, centre, .unit = "mm", .standard = "0,0,0", .what = "its middle",
+           .low = -MOST_MM, .high = MOST_MM),
+    TG_ROW(solid_keys, "axis", TG_VECTOR3, axis, .standard = "0,0,1", .what = "direction of its own z axis",
+           .low = -MOST_MM, .high = MOST_MM),
+    TG_ROW(solid_keys, "turn", TG_NUMBER, turn, .unit = "degrees", .standard = "0",
+           .what = "turn about its own z axis, counter-clockwise", .low = -360, .high = 360),
+    TG_ROW(solid_keys, "radius", TG_NUMBER, radius, .unit = "mm", .what = "radius; of a cone at its lower end",
+           .low = LEAST_MM, .high = MOST_MM),
+    TG_ROW(solid_keys, "top-radius", TG_NUMBER, top_radius, .unit = "mm", .what = "radius of a cone at its upper end",
+           .low = 0, .high = MOST_MM),
+    TG_ROW(solid_keys, "length", TG_NUMBER, length, .unit = "mm", .what = "full length along its own z axis",
+           .low = LEAST_MM, .high = MOST_MM),
+    TG_ROW(solid_keys, "size", TG_VECTOR3, size, .unit = "mm", .what = "full lengths along its own x, y and z axes",
+           .low = LEAST_MM, .high = MOST_MM),
     {0},
 };
 
 static const tg_field phantom_fields[] = {
-    ROW(phantom_keys, "phantom", TG_TEXT, phantom, .what = "name of the phantom", .required = true),
-    ROW(phantom_keys, "materials", TG_LIST, materials, .what = "what solids are made of", .item = material_fields,
-        .item_size = sizeof(material_keys), .required = true),
-    ROW(phantom_keys, "solids", TG_LIST, solids, .what = "what is where; a later solid displaces earlier ones",
-        .item = solid_fields, .item_size = sizeof(solid_keys), .required = true),
+    TG_ROW(phantom_keys, "phantom", TG_TEXT, phantom, .what = "name of the phantom", .required = true),
+    TG_ROW(phantom_keys, "materials", TG_LIST, materials, .what = "what solids are made of", .item = material_fields,
+           .item_size = sizeof(material_keys), .required = true),
+    TG_ROW(phantom_keys, "solids", TG_LIST, solids, .what = "what is where; a later solid displaces earlier ones",
+           .item = solid_fields, .item_size = sizeof(solid_keys), .required = true),
     {0},
 };
 

@@ -12,18 +12,13 @@ typedef struct {
     tg_number photons, seed, energy;
 } options;
 
-#define ROW(type, key_, kind_, member, ...) \
-    { \
-        .key = (key_), .kind = (kind_), .at = offsetof(type, member), __VA_ARGS__ \
-    }
-
 static const tg_field fields[] = {
-    ROW(options, "photons", TG_NUMBER, photons,
-        .what = "photons per channel and view without object, instead of the scanner's", .low = 1e-3, .high = 1e15),
-    ROW(options, "seed", TG_INTEGER, seed, .what = "seed of the noise, instead of the scanner's", .low = 0,
-        .high = 0x1p53),
-    ROW(options, "energy", TG_NUMBER, energy, .unit = "keV", .what = "photon energy, instead of the scanner's",
-        .low = 1, .high = 1000),
+    TG_ROW(options, "photons", TG_NUMBER, photons,
+           .what = "photons per channel and view without object, instead of the scanner's", .low = 1e-3, .high = 1e15),
+    TG_ROW(options, "seed", TG_INTEGER, seed, .what = "seed of the noise, instead of the scanner's", .low = 0,
+           .high = 0x1p53),
+    TG_ROW(options, "energy", TG_NUMBER, energy, .unit = "keV", .what = "photon energy, instead of the scanner's",
+           .low = 1, .high = 1000),
     {0},
 };
 

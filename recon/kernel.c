@@ -80,10 +80,10 @@ double tg_kernel_response(const tg_kernel *k, double fraction)
 /* ---- reading ---- */
 
 static const tg_field cutoff_field = {
-    "cut-off", TG_NUMBER, 0, NULL, NULL, NULL, "fraction of the Nyquist frequency", TG_ABOVE_ZERO, 2, NULL, 0, false};
+    .key = "cut-off", .kind = TG_NUMBER, .what = "fraction of the Nyquist frequency", .low = TG_ABOVE_ZERO, .high = 2};
 static const tg_field row_fields[2] = {
-    {"fraction", TG_NUMBER, 0, NULL, NULL, NULL, "fraction of the Nyquist frequency", 0, 2, NULL, 0, false},
-    {"value", TG_NUMBER, 0, NULL, NULL, NULL, "response of the window", -1000, 1000, NULL, 0, false},
+    {.key = "fraction", .kind = TG_NUMBER, .what = "fraction of the Nyquist frequency", .low = 0, .high = 2},
+    {.key = "value", .kind = TG_NUMBER, .what = "response of the window", .low = -1000, .high = 1000},
 };
 
 enum { MOST_BYTES = 1 << 20 };

@@ -1,22 +1,18 @@
 #include "recon/recipe.h"
 
-#define RECIPE(key_, kind_, member, ...) \
-    { \
-        .key = key_, .kind = kind_, .at = offsetof(tg_recipe, member), __VA_ARGS__ \
-    }
-
 const tg_field tg_recipe_fields[] = {
-    RECIPE("method", TG_TEXT, method, .standard = "fbp", .what = "method of reconstruction"),
-    RECIPE("kernel", TG_TEXT, kernel, .standard = "hann",
+    TG_ROW(tg_recipe, "method", TG_TEXT, method, .standard = "fbp", .what = "method of reconstruction"),
+    TG_ROW(tg_recipe, "kernel", TG_TEXT, kernel, .standard = "hann",
            .what = "window on the ramp: NAME, NAME@CUTOFF, or a file of fraction and value"),
-    RECIPE("pixels", TG_INTEGER, pixels, .standard = "512", .low = 1, .high = 16384, .what = "pixels along a side"),
-    RECIPE("field", TG_NUMBER, field_mm, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e6,
+    TG_ROW(tg_recipe, "pixels", TG_INTEGER, pixels, .standard = "512", .low = 1, .high = 16384,
+           .what = "pixels along a side"),
+    TG_ROW(tg_recipe, "field", TG_NUMBER, field_mm, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e6,
            .what = "side of the square field; without it the scan's field of view"),
-    RECIPE("centre", TG_VECTOR2, centre_mm, .unit = "mm", .standard = "0, 0", .low = -1e6, .high = 1e6,
+    TG_ROW(tg_recipe, "centre", TG_VECTOR2, centre_mm, .unit = "mm", .standard = "0, 0", .low = -1e6, .high = 1e6,
            .what = "middle of the field"),
-    RECIPE("axis-channel", TG_NUMBER, axis_channel, .low = -1e6, .high = 1e6,
+    TG_ROW(tg_recipe, "axis-channel", TG_NUMBER, axis_channel, .low = -1e6, .high = 1e6,
            .what = "channel met by the ray through the axis, the first being 1; without it the scan's own"),
-    RECIPE("mu-water", TG_NUMBER, mu_water_per_mm, .unit = "1/mm", .low = TG_ABOVE_ZERO, .high = 1e6,
+    TG_ROW(tg_recipe, "mu-water", TG_NUMBER, mu_water_per_mm, .unit = "1/mm", .low = TG_ABOVE_ZERO, .high = 1e6,
            .what = "attenuation of water, makes HU; without it the scan's own"),
     {0},
 };
