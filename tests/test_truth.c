@@ -60,8 +60,8 @@ static const Scene scenes[] = {
     {"spread, four slices", SPREAD_DISC(4, 6), FIGURES(spread_figures)},
 };
 
-/** Limits of the share of draws that are covered, in percent. Of 2000 draws: 93.5 to 96.5, as the design asks. Of
- * fewer, what 95 % scatters by: a fixed seed strays outside in one of 5000 (binomial). */
+/** Limits of the share of draws that are covered, in percent. Of 2000 draws: 93.5 to 96.5, three standard deviations of
+ * a share. Of fewer, what 95 % scatters by: a fixed seed strays outside in one of 5000 (binomial). */
 static void limits(int draws, double *low, double *high)
 {
     *low = 93.5;
