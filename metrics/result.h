@@ -45,7 +45,8 @@ typedef struct {
     size_t n_results, n_curves, n_regions;
 } tg_results;
 
-/** A new result with all numbers NaN, at the end of the list; NULL when there is no memory. */
+/** A new result with all numbers NaN, at the end of the list, valid until the next one is added; NULL when there is no
+ *  memory. */
 tg_result *tg_results_add(tg_results *r, const char *measure, const char *where, const char *unit);
 
 /** A new curve with room for n points. @param predicted  give it room for a prediction, too */

@@ -41,11 +41,14 @@ static void fill(tg_evaluated *item, const tg_recipe *recipe, double shift)
     tg_result_null(tg_results_add(&item->results, "mtf10", "wire", "lp/cm"),
                    "the pixels are too coarse: use a smaller field");
     tg_curve *mtf = tg_results_add_curve(&item->results, "mtf", "wire", "lp/cm", "", 40, true);
-    tg_curve *nps = tg_results_add_curve(&item->results, "nps", "body", "lp/cm", "HU2 mm2", 40, false);
     for (size_t k = 0; k < 40; k++) {
-        mtf->x[k] = nps->x[k] = 0.25 * (double)k;
+        mtf->x[k] = 0.25 * (double)k;
         mtf->y[k] = exp(-0.02 * (1 + 0.1 * shift) * (double)(k * k) * 0.25);
         mtf->predicted[k] = exp(-0.02 * (double)(k * k) * 0.25);
+    }
+    tg_curve *nps = tg_results_add_curve(&item->results, "nps", "body", "lp/cm", "HU^2 mm^2", 40, false);
+    for (size_t k = 0; k < 40; k++) {
+        nps->x[k] = 0.25 * (double)k;
         nps->y[k] = 40 * nps->x[k] * exp(-0.3 * nps->x[k] * (1 + 0.1 * shift));
     }
     const tg_region regions[] = {{TG_DISC, {50, 20}, 0, 7.2, {0, 0}, 0, "ptfe-rod"},
