@@ -283,15 +283,14 @@ static tg_row row_of(const tg_result *r)
     tg_words_value(r->value, r->uncertainty, value);
     tg_words_uncertainty(r->uncertainty, u);
     tg_words_limits(readable(r->low), readable(r->high), limits);
-    tg_cell(row.cell[0], "%s", r->measure);
-    tg_cell(row.cell[1], "%s", r->where);
+    tg_cell(row.cell[0], "  %s", r->where);
     if (isnan(r->value))
-        tg_cell(row.cell[2], "-");
+        tg_cell(row.cell[1], "-");
     else
-        tg_cell(row.cell[2], "%s +- %s %s", value, u, r->unit);
+        tg_cell(row.cell[1], "%s +- %s", value, u);
     if (r->verdict == TG_NO_LIMITS) return row;
-    tg_cell(row.cell[3], "%s", limits);
-    tg_cell(row.cell[4], "%s", tg_verdict_text(r->verdict));
+    tg_cell(row.cell[2], "%s", limits);
+    tg_cell(row.cell[3], "%s", tg_verdict_text(r->verdict));
     return row;
 }
 
@@ -302,20 +301,27 @@ static bool shown(const tg_evaluated *item, const tg_result *r)
     return judged ? r->verdict != TG_NO_LIMITS : !isnan(r->value);
 }
 
-/** Names give way to figures: a table too wide for the terminal loses the ends of names, not of numbers. */
-static void shorten_names(const tg_row *head, tg_row *row, size_t n)
+/** The figures that are shown, those of one measure below its name and unit. */
+static tg_code put_table(FILE *out, const tg_evaluated *item, size_t *n_shown, tg_error *e)
 {
-    enum { LEAST = 8, GAP = 2, CELLS = 5, NAME = 1 };
-    int room = COLUMNS - CELLS * GAP;
-    for (int c = 0; c < CELLS; c++) {
-        size_t width = strlen(head->cell[c]);
-        for (size_t i = 0; i < n; i++)
-            width = strlen(row[i].cell[c]) > width ? strlen(row[i].cell[c]) : width;
-        if (c != NAME) room -= (int)width;
+    static const tg_row head = {{"measure, where", "value +- U (95 %)", "specified", "verdict"}};
+    const tg_results *all = &item->results;
+    tg_row *row;
+    size_t n = 0;
+    const char *measure = "";
+    *n_shown = 0;
+    const tg_code code = TG_NEW(row, 2 * all->n_results, e);
+    for (size_t i = 0; row && i < all->n_results; i++) {
+        const tg_result *r = &all->result[i];
+        if (!shown(item, r)) continue;
+        if (strcmp(measure, r->measure)) tg_cell(row[n++].cell[0], *r->unit ? "%s [%s]" : "%s", r->measure, r->unit);
+        row[n++] = row_of(r);
+        measure = r->measure;
+        ++*n_shown;
     }
-    room = room > LEAST ? room : LEAST;
-    for (size_t i = 0; i < n; i++)
-        if ((int)strlen(row[i].cell[NAME]) > room) snprintf(row[i].cell[NAME] + room - 1, 2, "~");
+    if (n) tg_table_print(out, &head, row, n);
+    tg_free(row);
+    return code;
 }
 
 static void put_heading(FILE *out, const tg_evaluated *item)
@@ -340,12 +346,8 @@ static void put_note(FILE *out, const tg_result *r)
 
 static tg_code put_item(FILE *out, const tg_evaluated *item, tg_error *e)
 {
-    static const tg_row head = {{"measure", "where", "value +- U (95 %)", "specified", "verdict"}};
     const tg_results *all = &item->results;
-    tg_row *row;
-    size_t n = 0;
-    const tg_code code = TG_NEW(row, all->n_results, e);
-    if (code != TG_OK) return code;
+    size_t n;
     put_heading(out, item);
     if (item->unspecified) {
         char words[512];
@@ -354,15 +356,11 @@ static tg_code put_item(FILE *out, const tg_evaluated *item, tg_error *e)
         put_wrapped(out, words);
     }
     put_wrapped(out, item->lost);
-    for (size_t i = 0; i < all->n_results; i++)
-        if (shown(item, &all->result[i])) row[n++] = row_of(&all->result[i]);
-    shorten_names(&head, row, n);
-    if (n) tg_table_print(out, &head, row, n);
-    tg_free(row);
+    const tg_code code = put_table(out, item, &n, e);
     for (size_t i = 0; i < all->n_results; i++)
         if (shown(item, &all->result[i])) put_note(out, &all->result[i]);
     if (n < all->n_results) fprintf(out, "%*sand %zu more in the results\n", INDENT, "", all->n_results - n);
-    return TG_OK;
+    return code;
 }
 
 tg_code tg_results_text(const tg_evaluation *ev, char **text, tg_error *e)
