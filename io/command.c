@@ -13,7 +13,6 @@
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-#include <time.h>
 #include <unistd.h>
 
 enum { WIDTH = 80, MOST_OPTIONS = 64 };
@@ -249,13 +248,6 @@ typedef struct {
     double begun, drawn; /* [s] when it began, when the bar was last drawn */
 } bar;
 
-static double seconds_now(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
-
 static void erase(bar *b)
 {
     if (b->drawn > 0) fprintf(stderr, "\r%*s\r", WIDTH - 1, "");
@@ -281,7 +273,7 @@ static bool step(void *context, const char *what, double done)
 {
     bar *b = context;
     if (!b->visible) return !stopped;
-    const double now = seconds_now();
+    const double now = tg_seconds();
     done = done > 0 ? (done < 1 ? done : 1) : 0;
     if (strncmp(b->what, what, sizeof b->what - 1)) {
         snprintf(b->what, sizeof b->what, "%s", what);

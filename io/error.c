@@ -26,6 +26,11 @@ tg_code tg_fail(tg_error *e, tg_code code, const char *file, int line, const cha
     return code;
 }
 
+void tg_note(tg_code *code, tg_code found)
+{
+    if (*code == TG_OK || found == TG_MACHINE) *code = found;
+}
+
 void tg_warn(tg_error *e, const char *file, int line, const char *format, ...)
 {
     if (!e) return;

@@ -159,6 +159,7 @@ tg_code tg_fits_text(tg_fits *f, const char *key, char *text, size_t size)
     else
         memcpy(text, read, strlen(read) + 1);
 done:
+    status = 0; /* or nothing is released */
     if (read) fits_free_memory(read, &status);
     return code;
 }

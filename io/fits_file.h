@@ -4,8 +4,6 @@
 #include "io/fits.h"
 #include "io/output.h"
 
-#define TG_DEGREE 0.017453292519943295 /* rad */
-
 enum { TG_FITS_WORD = 72, TG_FITS_LONG = 4096 }; /* bytes of a one-card text, and of the longest that is read */
 
 /** A file open at one of its HDUs. */

@@ -2,9 +2,7 @@
 #define TG_PROCESS_H
 
 /** The few settings that belong to the whole process; a program that uses the library calls it once, first:
- *  GSL answers errors by return code instead of aborting, and numbers have a decimal point.
- *  xraylib sets the locale while it parses a formula: material.c calls it only while a description is read, never from
- *  several threads. */
+ *  GSL answers errors by return code instead of aborting, and numbers have a decimal point. */
 void tg_process_start(void);
 
 #endif

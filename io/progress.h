@@ -13,4 +13,12 @@ typedef struct {
 /** @return TG_OK, or TG_STOPPED when the work shall end */
 tg_code tg_progress_step(const tg_progress *p, const char *what, double done);
 
+/** Seconds of a clock that never goes back. */
+double tg_seconds(void);
+
+/** How many items (rows, views) to work on until the next report: at first one for each thread, then twice as many
+ *  as before while those take less than 0.05 s, so that an interrupt is answered soon.
+ *  @param last  items of the step before, 0: none  @param seconds  that they took */
+size_t tg_progress_items(size_t last, double seconds);
+
 #endif

@@ -15,6 +15,8 @@
  */
 #include "io/fields.h"
 
+#define TG_DEGREE 0.017453292519943295 /* rad */
+
 typedef enum { TG_PARALLEL, TG_FAN_EQUIANGULAR, TG_FAN_EQUISPACED } tg_geometry;
 #define TG_GEOMETRIES "parallel fan-equiangular fan-equispaced" /* in the order of the enum */
 

@@ -9,7 +9,7 @@
 
 enum { MOST_BYTES = 1 << 20, MOST_DEPTH = 50, MOST_ITEMS = 10000 };
 
-/* What is being read. Errors are collected: `code` is that of the first; only a machine error ends the work early. */
+/* What is being read. Errors are collected, `code` as tg_note has it; only a machine error ends the work early. */
 typedef struct {
     yaml_document_t *document;
     const char *file;
@@ -19,7 +19,7 @@ typedef struct {
 
 static void note(reader *r, tg_code code)
 {
-    if (r->code == TG_OK || code == TG_MACHINE) r->code = code;
+    tg_note(&r->code, code);
 }
 
 static int line_of(const yaml_node_t *node)

@@ -11,14 +11,6 @@
 #include <stdio.h>
 #include <string.h>
 #include <sys/resource.h>
-#include <time.h>
-
-static double now_s(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
 
 /** A part of the whole progress. */
 typedef struct {
@@ -127,7 +119,7 @@ static tg_code evaluate_one(const tg_job *job, const tg_phantom *phantom, const 
                             tg_evaluated *item, tg_error *e)
 {
     tg_code code = TG_OK;
-    const double start = now_s(), middle = 0.5 * (share->from + share->to);
+    const double start = tg_seconds(), middle = 0.5 * (share->from + share->to);
     part making = {share->whole, share->from, middle}, measuring = {share->whole, middle, share->to};
     const tg_progress make = {step_part, &making}, measure = {step_part, &measuring};
     tg_examine_options options = {.water = job->water.v, .lp_per_mm = job->frequency_unit.v > 0.5};
@@ -139,7 +131,7 @@ static tg_code evaluate_one(const tg_job *job, const tg_phantom *phantom, const 
     if (options.water) TG_TRY(scale_by_solid(&item->image, phantom, options.water, NULL, &options.water_u, e));
     TG_TRY(
         tg_evaluate_images(&item->image, 1, phantom, specification_of(job, item->recipe), &options, &measure, item, e));
-    item->seconds = now_s() - start;
+    item->seconds = tg_seconds() - start;
 done:
     return code;
 }
@@ -181,7 +173,7 @@ tg_code tg_evaluate(const tg_job *job, const tg_progress *progress, tg_evaluatio
     const size_t n = job->reconstructions.n;
     tg_error own = {0};
     const char *who = NULL; /* the reconstruction that `own` speaks of */
-    const double start = now_s(), share = 1.0 / (double)(n + 1);
+    const double start = tg_seconds(), share = 1.0 / (double)(n + 1);
     part scanning = {progress, 0, share};
     const tg_progress scan = {step_part, &scanning};
     *out = (tg_evaluation){.job = job};
@@ -194,7 +186,7 @@ tg_code tg_evaluate(const tg_job *job, const tg_progress *progress, tg_evaluatio
     else
         TG_TRY(simulate(job, &phantom, &scan, &s, &own));
     if (job->water.v) s.facts.mu_water_per_mm = (tg_number){(double)NAN, 0};
-    out->seconds_scan = now_s() - start;
+    out->seconds_scan = tg_seconds() - start;
 
     TG_TRY(TG_NEW(out->item, n, &own));
     out->n = n;

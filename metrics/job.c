@@ -52,12 +52,6 @@ static void make_tables(tables *t)
                          .item_size = sizeof(tg_recipe), .what = "every reconstruction to make", .required = true);
 }
 
-/** Keep the first failure, go on looking. */
-static void note(tg_code *code, tg_code found)
-{
-    if (*code == TG_OK) *code = found;
-}
-
 /** A kernel file is named relative to the job, as every path in a description is. */
 static tg_code resolve_kernel(const char *job, tg_text *kernel, tg_error *e)
 {
@@ -164,9 +158,9 @@ static tg_code check_scan(const tg_job *job, tg_error *e)
     const tg_number *const only_simulated[] = {&job->photons, &job->seed};
     for (size_t i = 0; i < 2; i++)
         if (only_simulated[i]->line)
-            note(&code,
-                 tg_fail(e, TG_INPUT, job->path, only_simulated[i]->line,
-                         "%s: belongs to a simulation and the scan is a file; leave it out", i ? "seed" : "photons"));
+            tg_note(&code, tg_fail(e, TG_INPUT, job->path, only_simulated[i]->line,
+                                   "%s: belongs to a simulation and the scan is a file; leave it out",
+                                   i ? "seed" : "photons"));
     return code;
 }
 
@@ -174,14 +168,14 @@ static tg_code check_recipe(tg_job *job, size_t at, const tg_phantom *phantom, t
 {
     tg_recipe *r = (tg_recipe *)job->reconstructions.v + at;
     tg_code code = resolve_kernel(job->path, &r->kernel, e);
-    note(&code, check_name(job, at, e));
-    note(&code, check_kernel(job, r, e));
-    note(&code, check_method(job, r, e));
-    if (!specification_seen(job, at)) note(&code, check_specification(r->specification.v, phantom, e));
+    tg_note(&code, check_name(job, at, e));
+    tg_note(&code, check_kernel(job, r, e));
+    tg_note(&code, check_method(job, r, e));
+    if (!specification_seen(job, at)) tg_note(&code, check_specification(r->specification.v, phantom, e));
     if (job->water.v && r->mu_water_per_mm.line)
-        note(&code,
-             tg_fail(e, TG_INPUT, job->path, r->mu_water_per_mm.line,
-                     "water: the solid of line %d defines CT number 0 already; keep one of them", job->water.line));
+        tg_note(&code,
+                tg_fail(e, TG_INPUT, job->path, r->mu_water_per_mm.line,
+                        "water: the solid of line %d defines CT number 0 already; keep one of them", job->water.line));
     return code;
 }
 
@@ -196,15 +190,15 @@ tg_code tg_job_read(const char *path, tg_job *job, tg_error *e)
     if (!(job->path = tg_copy_text(path))) TG_TRY(tg_no_memory(e, strlen(path), 1));
     const tg_code known = tg_phantom_read(job->phantom.v, &phantom, e);
     const tg_phantom *p = known == TG_OK ? &phantom : NULL;
-    note(&code, known);
-    note(&code, check_scan(job, e));
+    tg_note(&code, known);
+    tg_note(&code, check_scan(job, e));
     if (p && job->water.v && tg_phantom_find(p, job->water.v) == TG_NO_SOLID)
-        note(&code, tg_solid_unknown(p, "water", &job->water, path, e));
-    note(&code, check_specification(job->specification.v, p, e));
+        tg_note(&code, tg_solid_unknown(p, "water", &job->water, path, e));
+    tg_note(&code, check_specification(job->specification.v, p, e));
     if (!job->reconstructions.n)
-        note(&code, tg_fail(e, TG_INPUT, path, job->reconstructions.line, "reconstructions: name at least one"));
+        tg_note(&code, tg_fail(e, TG_INPUT, path, job->reconstructions.line, "reconstructions: name at least one"));
     for (size_t i = 0; i < job->reconstructions.n; i++)
-        note(&code, check_recipe(job, i, p, e));
+        tg_note(&code, check_recipe(job, i, p, e));
 done:
     tg_phantom_free(&phantom);
     if (code != TG_OK) tg_job_free(job);

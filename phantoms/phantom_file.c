@@ -1,9 +1,9 @@
 /* Phantom descriptions: the tables of their keys, and what keys must say together. */
 #include "io/memory.h"
+#include "io/scan.h"
 #include "io/yaml.h"
 #include "phantoms/phantom.h"
 
-#include <math.h>
 #include <stdio.h>
 #include <string.h>
 
@@ -84,11 +84,6 @@ static const char *const dimensions[] = {
     [TG_WEDGE] = "size",
 };
 
-static void note(tg_code *code, tg_code one)
-{
-    if (*code == TG_OK || one == TG_MACHINE) *code = one;
-}
-
 /** Move a name out of the keys, which are released later. */
 static tg_text move_text(tg_text *from)
 {
@@ -128,9 +123,9 @@ static tg_code build_materials(tg_list *list, const char *file, tg_phantom *p, t
     for (size_t i = 0; i < list->n; i++) {
         for (size_t j = 0; j < i; j++)
             if (!strcmp(p->material[j].name.v, k[i].name.v))
-                note(&code, tg_fail(e, TG_INPUT, file, k[i].name.line, "name: '%s' is taken by another material",
-                                    tg_show(k[i].name.v).text));
-        note(&code, build_material(&k[i], file, &p->material[i], e));
+                tg_note(&code, tg_fail(e, TG_INPUT, file, k[i].name.line, "name: '%s' is taken by another material",
+                                       tg_show(k[i].name.v).text));
+        tg_note(&code, build_material(&k[i], file, &p->material[i], e));
         p->material[i].name = move_text(&k[i].name);
     }
 done:
@@ -149,10 +144,10 @@ static tg_code check_dimensions(const solid_keys *k, const char *file, tg_error 
         const int line = tg_field_line(tg_fields_find(solid_fields, key), k);
         const bool belongs = tg_word_index(key, takes) >= 0;
         if (line && !belongs)
-            note(&code,
-                 tg_fail(e, TG_INPUT, file, line, "%s: means nothing for shape %s, which takes %s", key, shape, list));
+            tg_note(&code, tg_fail(e, TG_INPUT, file, line, "%s: means nothing for shape %s, which takes %s", key,
+                                   shape, list));
         if (!line && belongs)
-            note(&code, tg_fail(e, TG_INPUT, file, k->line, "%s is missing: shape %s takes %s", key, shape, list));
+            tg_note(&code, tg_fail(e, TG_INPUT, file, k->line, "%s is missing: shape %s takes %s", key, shape, list));
     }
     return code;
 }
@@ -181,12 +176,13 @@ static tg_code build_solid(solid_keys *k, const char *file, const tg_phantom *p,
     tg_code code = TG_OK;
     s->shape = (tg_shape)k->shape.v;
     s->line = k->line;
-    note(&code, find_material(k, file, p, &s->material, e));
-    note(&code, check_dimensions(k, file, e));
+    tg_note(&code, find_material(k, file, p, &s->material, e));
+    tg_note(&code, check_dimensions(k, file, e));
     if (k->axis.v[0] == 0 && k->axis.v[1] == 0 && k->axis.v[2] == 0)
-        note(&code, tg_fail(e, TG_INPUT, file, k->axis.line, "axis: [0, 0, 0] has no direction; [0, 0, 1] is upright"));
+        tg_note(&code,
+                tg_fail(e, TG_INPUT, file, k->axis.line, "axis: [0, 0, 0] has no direction; [0, 0, 1] is upright"));
     if (code != TG_OK) return code;
-    tg_solid_turn(s, k->axis.v, k->turn.v * acos(-1) / 180);
+    tg_solid_turn(s, k->axis.v, k->turn.v * TG_DEGREE);
     memcpy(s->centre_mm, k->centre.v, sizeof s->centre_mm);
     for (int i = 0; i < 3; i++)
         s->half_mm[i] = k->size.line ? k->size.v[i] / 2 : k->radius.v;
@@ -205,9 +201,9 @@ static tg_code build_solids(tg_list *list, const char *file, tg_phantom *p, tg_e
     TG_TRY(TG_NEW(p->solid, list->n, e));
     for (size_t i = 0; i < list->n; i++) {
         if (tg_phantom_find(p, k[i].name.v) != TG_NO_SOLID)
-            note(&code, tg_fail(e, TG_INPUT, file, k[i].name.line, "name: '%s' is taken by another solid",
-                                tg_show(k[i].name.v).text));
-        note(&code, build_solid(&k[i], file, p, &p->solid[i], e));
+            tg_note(&code, tg_fail(e, TG_INPUT, file, k[i].name.line, "name: '%s' is taken by another solid",
+                                   tg_show(k[i].name.v).text));
+        tg_note(&code, build_solid(&k[i], file, p, &p->solid[i], e));
         p->solid[i].name = move_text(&k[i].name);
         p->n_solids = i + 1;
     }
@@ -221,8 +217,8 @@ static tg_code build(phantom_keys *k, const char *file, tg_phantom *p, tg_error 
     tg_code code = TG_OK;
     tg_phantom made = {.name = move_text(&k->phantom), .path = tg_copy_text(file)};
     if (!made.path) TG_TRY(tg_no_memory(e, 1, 1));
-    note(&code, build_materials(&k->materials, file, &made, e));
-    if (code != TG_MACHINE && made.material) note(&code, build_solids(&k->solids, file, &made, e));
+    tg_note(&code, build_materials(&k->materials, file, &made, e));
+    if (code != TG_MACHINE && made.material) tg_note(&code, build_solids(&k->solids, file, &made, e));
 done:
     tg_fields_free(phantom_fields, k);
     if (code == TG_OK)

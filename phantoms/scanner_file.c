@@ -56,11 +56,6 @@ static const tg_field scanner_fields[] = {
     {0},
 };
 
-static void note(tg_code *code, tg_code one)
-{
-    if (*code == TG_OK || one == TG_MACHINE) *code = one;
-}
-
 /** Distances belong to fans, and put the detector behind the axis. */
 static tg_code check_distances(const scanner_keys *k, const char *file, tg_error *e)
 {
@@ -71,29 +66,30 @@ static tg_code check_distances(const scanner_keys *k, const char *file, tg_error
     } distance[] = {{"source-axis", k->source_axis.line}, {"source-detector", k->source_detector.line}};
     for (int i = 0; i < 2; i++) {
         if (k->geometry.v == TG_PARALLEL && distance[i].line)
-            note(&code, tg_fail(e, TG_INPUT, file, distance[i].line,
-                                "%s: means nothing for parallel rays; leave it out", distance[i].key));
+            tg_note(&code, tg_fail(e, TG_INPUT, file, distance[i].line,
+                                   "%s: means nothing for parallel rays; leave it out", distance[i].key));
         if (k->geometry.v != TG_PARALLEL && !distance[i].line)
-            note(&code,
-                 tg_fail(e, TG_INPUT, file, k->geometry.line, "%s is missing: a fan needs it, in mm", distance[i].key));
+            tg_note(&code, tg_fail(e, TG_INPUT, file, k->geometry.line, "%s is missing: a fan needs it, in mm",
+                                   distance[i].key));
     }
     if (k->source_detector.v < k->source_axis.v)
-        note(&code, tg_fail(e, TG_INPUT, file, k->source_detector.line,
-                            "source-detector: %g mm puts the detector before the axis, which is at source-axis %g mm",
-                            k->source_detector.v, k->source_axis.v));
+        tg_note(&code,
+                tg_fail(e, TG_INPUT, file, k->source_detector.line,
+                        "source-detector: %g mm puts the detector before the axis, which is at source-axis %g mm",
+                        k->source_detector.v, k->source_axis.v));
     return code;
 }
 
 static tg_code build_scan(const scanner_keys *k, const char *file, tg_scan *scan, tg_error *e)
 {
-    const double radian = acos(-1) / 180, sense = k->direction.v == CLOCKWISE ? -1 : 1;
+    const double sense = k->direction.v == CLOCKWISE ? -1 : 1;
     tg_code code = TG_OK;
     TG_TRY(check_distances(k, file, e));
     *scan = (tg_scan){.geometry = (tg_geometry)k->geometry.v,
                       .channels = (size_t)k->channels.v,
                       .views = (size_t)k->views.v,
                       .rows = (size_t)k->slices.v,
-                      .channel_step = k->pitch.v * (k->geometry.v == TG_FAN_EQUIANGULAR ? radian : 1),
+                      .channel_step = k->pitch.v * (k->geometry.v == TG_FAN_EQUIANGULAR ? TG_DEGREE : 1),
                       .channel_zero = k->axis_channel.line ? k->axis_channel.v - 1 : (k->channels.v - 1) / 2,
                       .row_step_mm = k->slice_pitch.v,
                       .row_zero = (k->slices.v - 1) / 2};
@@ -104,14 +100,14 @@ static tg_code build_scan(const scanner_keys *k, const char *file, tg_scan *scan
     const double side = k->aperture.v / 2; /* of the outermost channels */
     const double low = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, -side));
     const double high = tg_scan_fan_angle(scan, tg_scan_coordinate(scan, k->channels.v - 1 + side));
-    if (fmax(-low, high) > 85 * radian)
+    if (fmax(-low, high) > 85 * TG_DEGREE)
         TG_TRY(tg_fail(
             e, TG_INPUT, file, k->pitch.line,
             "pitch: the fan opens to %g degrees on one side; keep it below 85 by a smaller pitch or fewer channels",
-            fmax(-low, high) / radian));
+            fmax(-low, high) / TG_DEGREE));
     TG_TRY(TG_NEW(scan->angle_rad, scan->views, e));
     for (size_t i = 0; i < scan->views; i++)
-        scan->angle_rad[i] = (k->start.v + sense * k->arc.v * (double)i / k->views.v) * radian;
+        scan->angle_rad[i] = (k->start.v + sense * k->arc.v * (double)i / k->views.v) * TG_DEGREE;
 done:
     return code;
 }

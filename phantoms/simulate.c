@@ -5,10 +5,7 @@
 
 #include <math.h>
 
-enum {
-    PHOTON_NOISE = 1, /* purpose of a random stream */
-    BATCH = 64        /* views between two reports of progress */
-};
+enum { PHOTON_NOISE = 1 }; /* purpose of a random stream */
 
 /** What every ray of a simulation needs. */
 typedef struct {
@@ -122,33 +119,45 @@ done:
     return code;
 }
 
+/** Views [first, behind) of all slices.  @return rays without a photon */
+static size_t simulate_views(const beam *b, size_t first, size_t behind, float *v)
+{
+    const tg_scanner *s = b->scanner;
+    const size_t channels = s->scan.channels;
+    size_t none = 0;
+#pragma omp parallel for schedule(dynamic) reduction(+ : none)
+    for (size_t i = first; i < behind; i++) {
+        const double angle_rad = s->scan.angle_rad[i % s->scan.views];
+        const double z_mm = ((double)(i / s->scan.views) - s->scan.row_zero) * s->scan.row_step_mm;
+        float *view = v + i * channels;
+        for (size_t c = 0; c < channels; c++)
+            view[c] = (float)channel_value(b, angle_rad, z_mm, (double)c);
+        if (!isnan(s->photons_per_ray))
+            none += add_noise(view, channels, s->photons_per_ray, tg_random_stream((uint64_t)s->seed, PHOTON_NOISE, i));
+    }
+    return none;
+}
+
 tg_code tg_simulate(const tg_phantom *p, const tg_scanner *s, const tg_progress *progress, tg_sinogram *out,
                     tg_simulated *simulated, tg_error *e)
 {
     tg_code code = TG_OK;
     tg_sinogram made = {0};
-    double mu_per_mm[TG_MOST_SOLIDS];
+    double mu_per_mm[TG_MOST_SOLIDS], took_s = 0;
     const beam b = {p, s, mu_per_mm};
-    const size_t channels = s->scan.channels, views = s->scan.rows * s->scan.views;
-    size_t none = 0;
+    const size_t views = s->scan.rows * s->scan.views;
+    size_t none = 0, step = 0;
     TG_TRY(check_fit(p, s, e));
     TG_TRY(tg_phantom_mu(p, s->energy_kev, mu_per_mm, e));
     TG_TRY(tg_sinogram_create(&s->scan, &made, e));
     TG_TRY(set_facts(p, s, &made.facts, e));
-    for (size_t first = 0; first < views; first += BATCH) {
+    for (size_t first = 0; first < views; first += step) {
+        const double start = tg_seconds();
         TG_TRY(tg_progress_step(progress, "simulating", (double)first / (double)views));
-        const size_t behind = first + BATCH < views ? first + BATCH : views;
-#pragma omp parallel for schedule(dynamic) reduction(+ : none)
-        for (size_t i = first; i < behind; i++) {
-            const double angle_rad = s->scan.angle_rad[i % s->scan.views];
-            const double z_mm = ((double)(i / s->scan.views) - s->scan.row_zero) * s->scan.row_step_mm;
-            float *view = made.v + i * channels;
-            for (size_t c = 0; c < channels; c++)
-                view[c] = (float)channel_value(&b, angle_rad, z_mm, (double)c);
-            if (!isnan(s->photons_per_ray))
-                none +=
-                    add_noise(view, channels, s->photons_per_ray, tg_random_stream((uint64_t)s->seed, PHOTON_NOISE, i));
-        }
+        step = tg_progress_items(step, took_s);
+        if (step > views - first) step = views - first;
+        none += simulate_views(&b, first, first + step, made.v);
+        took_s = tg_seconds() - start;
     }
     TG_TRY(tg_progress_step(progress, "simulating", 1));
     *out = made;

@@ -5,7 +5,6 @@
 
 #include <math.h>
 #include <stdio.h>
-#include <time.h>
 
 /** What stands on the command line instead of in the scanner's description. */
 typedef struct {
@@ -29,13 +28,6 @@ static void override(const options *o, tg_scanner *s)
     if (o->energy.line) s->energy_kev = o->energy.v;
 }
 
-static double now_s(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
-
 /** --check: the size of the scan, and its time from that of a few views. */
 static tg_code estimate(const tg_phantom *p, const tg_scanner *s, tg_error *e)
 {
@@ -45,13 +37,13 @@ static tg_code estimate(const tg_phantom *p, const tg_scanner *s, tg_error *e)
     tg_scanner few = *s;
     few.scan.rows = 1;
     if (few.scan.views > FEW) few.scan.views = FEW;
-    const double start = now_s();
+    const double start = tg_seconds();
     TG_TRY(tg_simulate(p, &few, NULL, &sample, NULL, e));
     const double views = (double)s->scan.rows * (double)s->scan.views;
     const double bytes = 4 * views * (double)s->scan.channels;
     printf("%zu x %zu x %zu samples (slices, views, channels), %.1f MB in memory and in the file, about %.1f s\n",
            s->scan.rows, s->scan.views, s->scan.channels, bytes / 1e6,
-           (now_s() - start) * views / (double)few.scan.views);
+           (tg_seconds() - start) * views / (double)few.scan.views);
 done:
     tg_sinogram_free(&sample);
     return code;

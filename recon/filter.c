@@ -52,7 +52,7 @@ tg_code tg_filter_create(const tg_scan *scan, const tg_kernel *kernel, tg_filter
     if (low <= -M_PI_2 || high >= M_PI_2)
         TG_TRY(tg_fail(e, TG_INPUT, NULL, 0,
                        "the fan reaches from %.4g to %.4g degrees; a source sees less than 90 to either side",
-                       low * 180 / M_PI, high * 180 / M_PI));
+                       low / TG_DEGREE, high / TG_DEGREE));
     TG_TRY(TG_NEW(f, 1, e));
     f->channels = scan->channels;
     f->views = scan->views;

@@ -8,19 +8,21 @@
 #include <math.h>
 #include <string.h>
 
-/* Rows between two reports of progress: enough to keep every thread busy. */
-enum { ROWS_AT_ONCE = 64 };
-
 static tg_code backproject_slice(const tg_backprojector *b, const float *filtered, size_t z, tg_image *image,
                                  const tg_progress *progress)
 {
     const size_t ny = image->grid.n[1], nz = image->grid.n[2];
     float *slice = image->v + z * tg_grid_slice(&image->grid);
     tg_code code = TG_OK;
-    for (size_t y = 0; y < ny && code == TG_OK; y += ROWS_AT_ONCE) {
-        tg_backproject_rows(b, filtered, y, ny - y < ROWS_AT_ONCE ? ny - y : ROWS_AT_ONCE, slice);
-        const size_t done = y + ROWS_AT_ONCE < ny ? y + ROWS_AT_ONCE : ny;
-        code = tg_progress_step(progress, "back-projection", (double)(z * ny + done) / (double)(nz * ny));
+    size_t rows = 0;
+    double took_s = 0;
+    for (size_t y = 0; y < ny && code == TG_OK; y += rows) {
+        const double start = tg_seconds();
+        rows = tg_progress_items(rows, took_s);
+        if (rows > ny - y) rows = ny - y;
+        tg_backproject_rows(b, filtered, y, rows, slice);
+        code = tg_progress_step(progress, "back-projection", (double)(z * ny + y + rows) / (double)(nz * ny));
+        took_s = tg_seconds() - start;
     }
     return code;
 }

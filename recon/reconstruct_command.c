@@ -4,14 +4,6 @@
 #include "recon/reconstruct.h"
 
 #include <stdio.h>
-#include <time.h>
-
-static double now_s(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
 
 static const char *field_text(const tg_grid *g, char text[64])
 {
@@ -31,14 +23,14 @@ static tg_code estimate(const tg_sinogram *s, const tg_recipe *r, tg_error *e)
     slice.scan.rows = 1;
     if (coarse.pixels.v > 128) coarse.pixels.v = 128;
     TG_TRY(tg_recipe_grid(r, &s->scan, &grid, e));
-    const double start = now_s();
+    const double start = tg_seconds();
     TG_TRY(tg_reconstruct(&slice, &coarse, NULL, &sample, e));
     const double finer = (double)tg_grid_slice(&grid) / (double)tg_grid_slice(&sample.grid);
     const double rays = (double)s->scan.views * (double)s->scan.channels, pixels = (double)tg_grid_samples(&grid);
     /* the scan, one filtered slice of at least twice its length, the image */
     const double bytes = 4 * (rays * ((double)s->scan.rows + 2.2) + pixels);
     printf("%s, %.1f MB in memory, %.1f MB in the file, at most about %.1f s\n", field_text(&grid, text), bytes / 1e6,
-           4 * pixels / 1e6, (now_s() - start) * finer * (double)s->scan.rows);
+           4 * pixels / 1e6, (tg_seconds() - start) * finer * (double)s->scan.rows);
 done:
     tg_image_free(&sample);
     return code;

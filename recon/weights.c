@@ -36,11 +36,10 @@ static double usual_gap(const double *gap, size_t n, double *sorted)
 
 static tg_code check_gap(const tg_scan *scan, double from_rad, double gap_rad, double usual_rad, tg_error *e)
 {
-    const double degree = M_PI / 180;
-    if (gap_rad <= 3 * usual_rad && gap_rad <= 45 * degree) return TG_OK;
+    if (gap_rad <= 3 * usual_rad && gap_rad <= 45 * TG_DEGREE) return TG_OK;
     const bool parallel = scan->geometry == TG_PARALLEL;
-    const double from = from_rad / degree, to = (from_rad + gap_rad) / degree;
-    if (gap_rad > 45 * degree || gap_rad > fmax(2 * degree, 4 * usual_rad))
+    const double from = from_rad / TG_DEGREE, to = (from_rad + gap_rad) / TG_DEGREE;
+    if (gap_rad > 45 * TG_DEGREE || gap_rad > fmax(2 * TG_DEGREE, 4 * usual_rad))
         return tg_fail(e, TG_INPUT, NULL, 0,
                        "no view between %.4g and %.4g degrees; a %s scan needs views all over %d degrees", from, to,
                        parallel ? "parallel" : "fan-beam", parallel ? 180 : 360);

@@ -272,7 +272,7 @@ static bool stop_halfway(void *context, const char *what, double done)
 {
     double *last = context;
     ck_assert_str_eq(what, "back-projection");
-    ck_assert(done > *last && done <= 1);
+    ck_assert(*last < 0.5 && done > *last && done <= 1); /* not called again after it said stop */
     *last = done;
     return done < 0.5;
 }
@@ -287,7 +287,7 @@ START_TEST(stopped)
     const tg_progress progress = {stop_halfway, &last};
     scan_blobs(TG_PARALLEL, 1, &s);
     ck_assert_int_eq(tg_reconstruct(&s, &r, &progress, &image, &e), TG_STOPPED);
-    ck_assert(last >= 0.5 && last < 0.7 && !image.v);
+    ck_assert(last >= 0.5 && !image.v);
     tg_sinogram_free(&s);
     tg_fields_free(tg_recipe_fields, &r);
 }

@@ -2,21 +2,14 @@
  * holds a time and its ratio to a ceiling measured in the same run: the time in which the machine's float multiply-adds
  * (for the filter: its memory) could do the same updates, 2 a pixel and view. */
 #include "io/memory.h"
+#include "io/progress.h"
 #include "recon/backproject.h"
 #include "recon/filter.h"
 
 #include <math.h>
 #include <stdio.h>
-#include <time.h>
 
 enum { CHANNELS = 736, VIEWS = 984, PIXELS = 512, ROUNDS = 5 };
-
-static double now_s(void)
-{
-    struct timespec t;
-    clock_gettime(CLOCK_MONOTONIC, &t);
-    return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
-}
 
 /* Multiply-adds a second, all threads: independent chains that fit in registers. */
 static double multiply_adds_per_s(void)
@@ -25,7 +18,7 @@ static double multiply_adds_per_s(void)
     double best = 0;
     float kept[BLOCKS];
     for (int round = 0; round < ROUNDS; round++) {
-        const double start = now_s();
+        const double start = tg_seconds();
 #pragma omp parallel for
         for (int block = 0; block < BLOCKS; block++) {
             float chain[CHAINS];
@@ -36,7 +29,7 @@ static double multiply_adds_per_s(void)
                     chain[i] = chain[i] * 0.999F + 0.001F;
             kept[block] = chain[block % CHAINS];
         }
-        best = fmax(best, (double)BLOCKS * TURNS * CHAINS / (now_s() - start));
+        best = fmax(best, (double)BLOCKS * TURNS * CHAINS / (tg_seconds() - start));
     }
     return kept[0] >= 0 ? best : 0;
 }
@@ -47,11 +40,11 @@ static double bytes_per_s(void)
     float *a = tg_alloc(n, sizeof *a), *b = tg_alloc(n, sizeof *b);
     double best = 0;
     for (int round = 0; a && b && round < ROUNDS; round++) {
-        const double start = now_s();
+        const double start = tg_seconds();
 #pragma omp parallel for
         for (size_t i = 0; i < n; i++)
             a[i] = 0.5F * a[i] + b[i];
-        best = fmax(best, 12 * (double)n / (now_s() - start));
+        best = fmax(best, 12 * (double)n / (tg_seconds() - start));
     }
     tg_free(a);
     tg_free(b);
@@ -99,12 +92,12 @@ static tg_code bench(tg_geometry geometry, const char *name, double adds, double
     TG_TRY(tg_backprojector_create(&scan, &grid, tg_filter_stride(filter), &b, e));
     TG_TRY(TG_NEW(filtered, VIEWS * tg_filter_stride(filter), e));
     for (int round = 0; round < ROUNDS; round++) {
-        const double start = now_s();
+        const double start = tg_seconds();
         tg_filter_apply(filter, weight, line, filtered);
-        const double middle = now_s();
+        const double middle = tg_seconds();
         tg_backproject_rows(b, filtered, 0, PIXELS, slice);
         best_filter_s = fmin(best_filter_s, middle - start);
-        best_s = fmin(best_s, now_s() - middle);
+        best_s = fmin(best_s, tg_seconds() - middle);
     }
     report("filter", name, best_filter_s, "triad", 4.0 * VIEWS * (CHANNELS + (double)tg_filter_stride(filter)) / bytes);
     report("backproject", name, best_s, "multiply-add", 2.0 * VIEWS * PIXELS * PIXELS / adds);
