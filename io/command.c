@@ -111,6 +111,7 @@ static const char *limits(const tg_field *f, char out[256])
     case TG_NUMBER: return tg_field_range(f, out) + strlen("a number");
     case TG_INTEGER: return tg_field_range(f, out) + strlen("a whole number");
     case TG_CHOICE: return tg_field_range(f, out);
+    case TG_TEXT: tg_words_list(f->words, " or ", out, 256); return out;
     case TG_VECTOR2:
     case TG_VECTOR3: snprintf(out, 256, f->unit ? "in %s" : "%s", f->unit ? f->unit : ""); return out;
     default: return "";

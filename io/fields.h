@@ -48,7 +48,7 @@ typedef struct tg_field {
     tg_kind kind;
     size_t at;                   /* offsetof the value in the struct */
     const char *unit;            /* "mm"; NULL: none */
-    const char *words;           /* "cylinder sphere", for TG_CHOICE and the special words of TG_NUMBER */
+    const char *words;           /* "cylinder sphere": of TG_CHOICE, special ones of TG_NUMBER, known ones of TG_TEXT */
     const char *standard;        /* the default as one would write it; NULL: none (NaN, NULL, or an empty list) */
     const char *what;            /* one sentence without a full stop, for --help and error messages; never NULL */
     double low, high;            /* inclusive; both 0: any; +-DBL_MAX: no such limit. Of each component of a vector */

@@ -60,13 +60,13 @@ static void put_vector(written *w, const char *prefix, const tg_field *f, const 
 static void put_plain(written *w, const char *prefix, const tg_field *f, const tg_number *number)
 {
     const bool none = isnan(number->v);
-    char word[TG_WORD] = "";
+    char word[TG_WORD];
     if (none && !number->line) return;
     put_key(w, prefix, f);
     if (f->kind == TG_SWITCH)
         put(w, number->v != 0 ? "true" : "false");
     else if (none || f->kind == TG_CHOICE)
-        put(w, "%s", tg_word_at(f->words, none ? 0 : (int)number->v, word) ? word : "");
+        put(w, "%s", tg_word_at(f->words, none ? 0 : (int)number->v, word));
     else
         put_number(w, number->v);
 }

@@ -46,7 +46,7 @@ done:
 void tg_fits_put_source(tg_fits *f, const tg_scan *scan)
 {
     char word[TG_WORD];
-    tg_fits_put_text(f, "SCANGEOM", tg_word_at(geometries, (int)scan->geometry, word) ? word : "", NULL);
+    tg_fits_put_text(f, "SCANGEOM", tg_word_at(geometries, (int)scan->geometry, word), NULL);
     if (scan->geometry == TG_PARALLEL) return;
     tg_fits_put_number(f, "SRCAXIS", scan->source_axis_mm, "[mm] source to axis");
     tg_fits_put_number(f, "SRCDET", scan->source_detector_mm, "[mm] source to detector");

@@ -6,6 +6,7 @@
 #include <errno.h>
 #include <stdio.h>
 #include <string.h>
+#include <sys/stat.h>
 #include <zlib.h>
 
 static tg_code fail_read(const char *path, tg_error *e)
@@ -68,14 +69,15 @@ tg_code tg_read_file(const char *path, size_t most, char **text, size_t *bytes, 
 {
     tg_code code = TG_OK;
     char *read = NULL;
-    long length = 0;
+    struct stat st;
     FILE *in = fopen(path, "rb");
     if (!in) return fail_read(path, e);
-    if (fseek(in, 0, SEEK_END) || (length = ftell(in)) < 0 || fseek(in, 0, SEEK_SET)) TG_TRY(fail_read(path, e));
-    if ((size_t)length > most)
-        TG_TRY(tg_fail(e, TG_INPUT, path, 0, "has %ld bytes; at most %zu are read", length, most));
-    TG_TRY(TG_NEW(read, (size_t)length + 1, e)); /* zeroed: ends with NUL */
-    const size_t got = fread(read, 1, (size_t)length, in);
+    if (fstat(fileno(in), &st)) TG_TRY(fail_read(path, e));
+    if (!S_ISREG(st.st_mode)) TG_TRY(tg_fail(e, TG_INPUT, path, 0, "is not a file"));
+    const size_t length = (size_t)st.st_size;
+    if (length > most) TG_TRY(tg_fail(e, TG_INPUT, path, 0, "has %zu bytes; at most %zu are read", length, most));
+    TG_TRY(TG_NEW(read, length + 1, e)); /* zeroed: ends with NUL */
+    const size_t got = fread(read, 1, length, in);
     if (ferror(in)) TG_TRY(fail_read(path, e));
     *text = read;
     if (bytes) *bytes = got;

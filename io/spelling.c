@@ -39,11 +39,12 @@ int tg_word_index(const char *word, const char *words)
     return -1;
 }
 
-bool tg_word_at(const char *words, int index, char out[TG_WORD])
+const char *tg_word_at(const char *words, int index, char out[TG_WORD])
 {
     for (int i = 0; tg_word_next(&words, out); i++)
-        if (i == index) return true;
-    return false;
+        if (i == index) return out;
+    out[0] = '\0';
+    return out;
 }
 
 /* Letters to insert, drop, change or swap with their neighbour, in lower case: the optimal string alignment. */
@@ -70,7 +71,7 @@ static size_t distance(const char *a, const char *b)
     return row[n % 3][m];
 }
 
-bool tg_nearest(const char *word, const char *words, char out[64])
+bool tg_nearest(const char *word, const char *words, char out[TG_WORD])
 {
     const size_t n = strlen(word);
     if (n == 0 || n >= TG_WORD) return false;

@@ -12,8 +12,8 @@ const char *tg_word_next(const char **words, char out[TG_WORD]);
 /** Index of a word among several, or -1. */
 int tg_word_index(const char *word, const char *words);
 
-/** The word of an index; false when there are fewer. */
-bool tg_word_at(const char *words, int index, char out[TG_WORD]);
+/** The word of an index, "" when there are fewer.  @return out */
+const char *tg_word_at(const char *words, int index, char out[TG_WORD]);
 
 /** "cylinder, sphere or box".  @param joint  between the last two: " or " */
 void tg_words_list(const char *words, const char *joint, char *out, size_t size);

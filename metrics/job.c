@@ -87,20 +87,6 @@ static tg_code check_kernel(const tg_job *job, const tg_recipe *r, tg_error *e)
     return code;
 }
 
-static tg_code check_method(const tg_job *job, const tg_recipe *r, tg_error *e)
-{
-    char words[256] = "", near[64];
-    size_t at = 0;
-    if (!r->method.v) return TG_OK;
-    for (const tg_method *m = tg_methods; m->name; m++) {
-        if (!strcmp(m->name, r->method.v)) return TG_OK;
-        if (at < sizeof words) at += (size_t)snprintf(words + at, sizeof words - at, "%s%s", at ? " " : "", m->name);
-    }
-    const bool found = tg_nearest(r->method.v, words, near);
-    return tg_fail(e, TG_INPUT, job->path, r->method.line, "method: there is no method '%s'; %s %s",
-                   tg_show(r->method.v).text, found ? "did you mean" : "there are:", found ? near : words);
-}
-
 /** A name becomes the name of files. */
 static tg_code check_name(const tg_job *job, size_t at, tg_error *e)
 {
@@ -170,7 +156,6 @@ static tg_code check_recipe(tg_job *job, size_t at, const tg_phantom *phantom, t
     tg_code code = resolve_kernel(job->path, &r->kernel, e);
     tg_note(&code, check_name(job, at, e));
     tg_note(&code, check_kernel(job, r, e));
-    tg_note(&code, check_method(job, r, e));
     if (!specification_seen(job, at)) tg_note(&code, check_specification(r->specification.v, phantom, e));
     if (job->water.v && r->mu_water_per_mm.line)
         tg_note(&code,

@@ -358,7 +358,7 @@ static tg_code show_job(const char *path, tg_error *e)
         const tg_recipe *r = (const tg_recipe *)job.reconstructions.v + i;
         const char *specification = r->specification.v ? r->specification.v : job.specification.v;
         tg_cell(row[i].cell[0], "%s", tg_show(r->name.v).text);
-        tg_cell(row[i].cell[1], "%s", tg_show(r->method.v ? r->method.v : "").text);
+        tg_word_at(TG_METHODS, (int)r->method.v, row[i].cell[1]);
         tg_cell(row[i].cell[2], "%s", tg_show(r->kernel.v ? r->kernel.v : "").text);
         tg_cell(row[i].cell[3], "%.0f", r->pixels.v);
         if (r->field_mm.line)

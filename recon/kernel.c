@@ -48,15 +48,20 @@ static double butterworth(double u)
     return 1 / sqrt(1 + u * u * u * u);
 }
 
-const tg_apodisation tg_apodisations[] = {
-    {"ramp", ramp, 1, "Bracewell and Riddle 1967"},
-    {"shepp-logan", shepp_logan, 1, "Shepp and Logan 1974"},
-    {"cosine", cosine, 1, "common practice"},
-    {"hann", hann, 1, "Blackman and Tukey 1958"},
-    {"hamming", hamming, 1, "Blackman and Tukey 1958"},
-    {"parzen", parzen, 1, "Parzen 1961"},
-    {"butterworth", butterworth, INFINITY, "Butterworth 1930, order 2, amplitude 1/sqrt(2) at the cut-off"},
-    {0},
+struct tg_apodisation {
+    double (*response)(double u); /* u = f / cut-off, 0..end */
+    double end;                   /* the response beyond is 0; INFINITY: the window only rolls off at its cut-off */
+};
+
+static const tg_apodisation apodisations[] = {
+    /* in the order of TG_WINDOWS */
+    {ramp, 1},               /* Bracewell and Riddle 1967 */
+    {shepp_logan, 1},        /* Shepp and Logan 1974 */
+    {cosine, 1},             /* common practice */
+    {hann, 1},               /* Blackman and Tukey 1958 */
+    {hamming, 1},            /* Blackman and Tukey 1958 */
+    {parzen, 1},             /* Parzen 1961 */
+    {butterworth, INFINITY}, /* Butterworth 1930, order 2, amplitude 1/sqrt(2) at the cut-off */
 };
 
 double tg_kernel_end(const tg_kernel *k)
@@ -138,33 +143,32 @@ done:
     return code;
 }
 
-static tg_code unknown(const char *text, tg_error *e)
+static tg_code unknown(const char *text, const char *name, tg_error *e)
 {
-    char names[256] = "", nearest[64], head[64];
-    for (const tg_apodisation *a = tg_apodisations; a->name; a++) {
-        const size_t used = strlen(names);
-        snprintf(names + used, sizeof names - used, "%s%s", used ? " " : "", a->name);
-    }
-    snprintf(head, sizeof head, "%.*s", (int)strcspn(text, "@"), text);
-    const bool near = tg_nearest(head, names, nearest);
-    return tg_fail(e, TG_INPUT, NULL, 0, "'%s' is no window and no kernel file; %s%s", text,
-                   near ? "the nearest name is " : "windows are ", near ? nearest : names);
+    char known[256];
+    const bool near = tg_nearest(name, TG_WINDOWS, known);
+    if (!near) tg_words_list(TG_WINDOWS, " and ", known, sizeof known);
+    return tg_fail(e, TG_INPUT, NULL, 0, "'%s' is no window and no kernel file; %s%s", tg_show(text).text,
+                   near ? "the nearest name is " : "windows are ", known);
 }
 
 tg_code tg_kernel_read(const char *text, tg_kernel *k, tg_error *e)
 {
     tg_code code = TG_OK;
     tg_kernel read = {.cutoff = 1};
+    char name[TG_WORD];
     const size_t head = strcspn(text, "@");
-    TG_TRY((read.text = tg_copy_text(text)) ? TG_OK : tg_no_memory(e, strlen(text), 1));
-    for (const tg_apodisation *a = tg_apodisations; a->name && !read.apodisation; a++)
-        if (strlen(a->name) == head && !strncmp(a->name, text, head)) read.apodisation = a;
-    if (read.apodisation && text[head]) {
-        tg_number cutoff;
-        TG_TRY(tg_field_set(&cutoff_field, &cutoff, text + head + 1, "", 0, e)); /* "": no file, but no option either */
-        read.cutoff = cutoff.v;
-    } else if (!read.apodisation) {
-        TG_TRY(access(text, F_OK) == 0 ? read_file(text, &read, e) : unknown(text, e));
+    snprintf(name, sizeof name, "%.*s", (int)head, text);
+    const int index = tg_word_index(name, TG_WINDOWS);
+    if (index < 0) {
+        TG_TRY(access(text, F_OK) == 0 ? read_file(text, &read, e) : unknown(text, name, e));
+    } else {
+        read.apodisation = &apodisations[index];
+        if (text[head]) {
+            tg_number cutoff;
+            TG_TRY(tg_field_set(&cutoff_field, &cutoff, text + head + 1, "", 0, e)); /* "": no file, no option either */
+            read.cutoff = cutoff.v;
+        }
     }
 done:
     if (code == TG_OK)
@@ -176,7 +180,6 @@ done:
 
 void tg_kernel_free(tg_kernel *k)
 {
-    tg_free(k->text);
     tg_free(k->fraction);
     tg_free(k->value);
     *k = (tg_kernel){0};

@@ -2,15 +2,9 @@
 #define TG_KERNEL_H
 #include "io/error.h"
 
-/** An apodising window as a row of a table. */
-typedef struct {
-    const char *name;
-    double (*response)(double u); /* u = f / cut-off, 0..end */
-    double end;                   /* the response beyond is 0; INFINITY: the window only rolls off at its cut-off */
-    const char *source;           /* author year */
-} tg_apodisation;
+#define TG_WINDOWS "ramp shepp-logan cosine hann hamming parzen butterworth"
 
-extern const tg_apodisation tg_apodisations[]; /* ends with a NULL name */
+typedef struct tg_apodisation tg_apodisation; /* a row of the table of windows */
 
 /** The window that multiplies the ramp: NAME, NAME@CUTOFF (fraction of Nyquist, without it 1), or a text file of rows
  *  "fraction value", fractions rising from 0 to at most 2, with # before comments.
@@ -18,7 +12,6 @@ extern const tg_apodisation tg_apodisations[]; /* ends with a NULL name */
  *  Each view holds frequencies up to its Nyquist frequency, no more: a cut-off above 1 stretches the window beyond it,
  *  so that less is taken away below (scans with a quarter-channel offset hold more, between opposed views). */
 typedef struct {
-    char *text;                        /* as it was written, owned */
     const tg_apodisation *apodisation; /* NULL: from a file */
     double cutoff;                     /* fraction of the Nyquist frequency, 0 < cutoff <= 2 */
     size_t n;                          /* rows of a file */

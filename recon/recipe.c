@@ -1,9 +1,13 @@
 #include "recon/recipe.h"
 
+#include "recon/kernel.h"
+
 const tg_field tg_recipe_fields[] = {
-    TG_ROW(tg_recipe, "method", TG_TEXT, method, .standard = "fbp", .what = "method of reconstruction"),
-    TG_ROW(tg_recipe, "kernel", TG_TEXT, kernel, .standard = "hann",
-           .what = "window on the ramp: NAME, NAME@CUTOFF, or a file of fraction and value"),
+    TG_ROW(tg_recipe, "method", TG_CHOICE, method, .words = TG_METHODS, .standard = "fbp",
+           .what = "method of reconstruction: filtered back-projection"),
+    TG_ROW(tg_recipe, "kernel", TG_TEXT, kernel, .words = TG_WINDOWS, .standard = "hann",
+           .what = "window on the ramp: NAME, NAME@CUTOFF with the cut-off as a fraction of the Nyquist frequency (1 "
+                   "when not given), or a file of fraction and value"),
     TG_ROW(tg_recipe, "pixels", TG_INTEGER, pixels, .standard = "512", .low = 1, .high = 16384,
            .what = "pixels along a side"),
     TG_ROW(tg_recipe, "field", TG_NUMBER, field_mm, .unit = "mm", .low = TG_ABOVE_ZERO, .high = 1e6,

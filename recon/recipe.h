@@ -3,10 +3,12 @@
 #include "io/grid.h"
 #include "io/scan.h"
 
+#define TG_METHODS "fbp"
+
 /** What one reconstruction is: the same keys as options and in a job file. */
 typedef struct {
     tg_text name;       /* in a job */
-    tg_text method;     /* "fbp" */
+    tg_number method;   /* index of one of TG_METHODS */
     tg_text kernel;     /* "hann@0.8" or a file */
     tg_number pixels;   /* along a side */
     tg_number field_mm; /* side of the square field; not given: the scan's field of view */

@@ -57,18 +57,7 @@ done:
     return code;
 }
 
-const tg_method tg_methods[] = {
-    {"fbp", "filtered back-projection", fbp},
-    {0},
-};
-
-static const tg_method *find_method(const char *name, tg_error *e)
-{
-    for (const tg_method *m = tg_methods; m->name; m++)
-        if (!strcmp(m->name, name)) return m;
-    tg_fail(e, TG_INPUT, NULL, 0, "method '%s' is not known; write %s", name, tg_methods[0].name);
-    return NULL;
-}
+static tg_method *const methods[] = {fbp}; /* in the order of TG_METHODS */
 
 static tg_code check_finite(const tg_sinogram *s, tg_error *e)
 {
@@ -98,7 +87,8 @@ static tg_code describe(const tg_sinogram *s, const tg_recipe *r, tg_image *imag
     tg_code code = tg_facts_copy(&s->facts, &image->facts, e);
     if (code != TG_OK || (code = tg_scan_copy(&s->scan, &image->scan, e)) != TG_OK) return code;
     image->scan.channel_zero = tg_recipe_channel_zero(r, &s->scan);
-    image->method = tg_copy_text(r->method.v);
+    char method[TG_WORD];
+    image->method = tg_copy_text(tg_word_at(TG_METHODS, (int)r->method.v, method));
     image->kernel = tg_copy_text(r->kernel.v);
     return image->method && image->kernel ? TG_OK : tg_no_memory(e, 1, strlen(r->kernel.v));
 }
@@ -109,13 +99,11 @@ tg_code tg_reconstruct(const tg_sinogram *s, const tg_recipe *r, const tg_progre
     tg_code code = TG_OK;
     tg_image made = {0};
     tg_grid grid;
-    const tg_method *method = find_method(r->method.v, e);
-    if (!method) return TG_INPUT;
     TG_TRY(check_finite(s, e));
     TG_TRY(tg_recipe_grid(r, &s->scan, &grid, e));
     TG_TRY(tg_image_create(&grid, TG_PER_MM, &made, e));
     TG_TRY(describe(s, r, &made, e));
-    TG_TRY(method->run(s, r, &made, progress, e));
+    TG_TRY(methods[(int)r->method.v](s, r, &made, progress, e));
     const double own = r->mu_water_per_mm.v, water = own > 0 ? own : s->facts.mu_water_per_mm.v;
     if (water > 0) tg_to_hu(&made, water); /* NaN: unknown */
 done:

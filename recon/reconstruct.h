@@ -5,13 +5,11 @@
 #include "io/sinogram.h"
 #include "recon/recipe.h"
 
-/** One method of reconstruction: a row of a table. */
-typedef struct {
-    const char *name, *what;
-    tg_code (*run)(const tg_sinogram *s, const tg_recipe *r, tg_image *image, const tg_progress *progress, tg_error *e);
-} tg_method;
-
-extern const tg_method tg_methods[]; /* ends with a NULL name */
+/** One method of reconstruction.
+ *  @param image  zeroed pixels on the recipe's grid, with a copy of the scan in which the recipe's axis channel stands;
+ *                the method writes 1/mm */
+typedef tg_code tg_method(const tg_sinogram *s, const tg_recipe *r, tg_image *image, const tg_progress *progress,
+                          tg_error *e);
 
 /** Sinogram and recipe to image, one slice per row, in HU when the water value is known (recipe, then scan), else 1/mm.
  *  Bit-identical for any number of threads.

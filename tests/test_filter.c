@@ -107,11 +107,13 @@ END_TEST
 START_TEST(too_wide)
 {
     tg_scan scan = make_scan(TG_FAN_EQUIANGULAR, 1600, 1);
-    const tg_kernel kernel = {.apodisation = tg_apodisations, .cutoff = 1};
+    tg_kernel kernel;
     tg_error e = {0};
+    CK_OK(tg_kernel_read("ramp", &kernel, &e));
     tg_filter *filter = NULL;
     ck_assert_int_eq(tg_filter_create(&scan, &kernel, &filter, &e), TG_INPUT);
     ck_assert_ptr_null(filter);
+    tg_kernel_free(&kernel);
 }
 END_TEST
 

@@ -244,7 +244,6 @@ END_TEST
 static const struct {
     const char *key, *value, *says;
 } wrong[] = {
-    {"method", "fpb", "'fpb' is not known"},
     {"kernel", "han", "hann"},
     {NULL, NULL, "channel 6 of view 3, row 2 holds nan"},
 };
