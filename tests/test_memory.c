@@ -5,6 +5,7 @@
 #include "io/json.h"
 #include "io/memory.h"
 #include "io/png.h"
+#include "metrics/results_file.h"
 #include "phantoms/simulate.h"
 #include "recon/kernel.h"
 #include "recon/reconstruct.h"
@@ -25,7 +26,7 @@ void *__wrap_aligned_alloc(size_t alignment, size_t bytes)
 }
 
 static const char scanner_text[] = "scanner: small\ngeometry: fan-equispaced\nsource-axis: 500\nsource-detector: 900\n"
-                                   "channels: 24\npitch: 15\nviews: 12\nslices: 2\nsubrays: 1\nphotons: 1000\n";
+                                   "channels: 128\npitch: 3\nviews: 60\nslices: 2\nsubrays: 1\nphotons: 1000000\n";
 
 /* What the calls work on, made while memory was plenty. */
 static tg_phantom phantom;
@@ -33,6 +34,7 @@ static tg_scanner scanner;
 static tg_sinogram sinogram;
 static tg_recipe recipe;
 static tg_image image;
+static tg_job job;
 static tg_inputs inputs;
 static const tg_provenance made = {"test", "pixels=8", &inputs};
 static size_t files;
@@ -140,6 +142,26 @@ static tg_code write_json(void *out, tg_error *e)
     return code;
 }
 
+static tg_code read_job(void *out, tg_error *e)
+{
+    return tg_job_read(scratch("job.yaml"), out, e);
+}
+
+static void free_job(void *out)
+{
+    tg_job_free(out);
+}
+
+static tg_code evaluate(void *out, tg_error *e)
+{
+    return tg_evaluate(&job, NULL, out, e);
+}
+
+static void free_evaluation(void *out)
+{
+    tg_evaluation_free(out);
+}
+
 static void remove_out(void *out)
 {
     (void)out;
@@ -150,25 +172,28 @@ static const struct {
     const char *name;
     tg_code (*run)(void *out, tg_error *e);
     void (*undo)(void *out);
+    bool predicts; /* goes on without a prediction that theory could not make */
 } calls[] = {
-    {"read a phantom", read_phantom, free_phantom},
-    {"read a scanner", read_scanner, free_scanner},
-    {"simulate", simulate, free_sinogram},
-    {"read a sinogram", read_sinogram, free_sinogram},
-    {"reconstruct", reconstruct, free_image},
-    {"read an image", read_image, free_image},
-    {"read a kernel", read_kernel, free_kernel},
-    {"add an input", add_input, free_inputs},
-    {"write a sinogram", write_sinogram, remove_out},
-    {"write an image", write_image, remove_out},
-    {"write a PNG", write_png, remove_out},
-    {"write JSON", write_json, remove_out},
+    {"read a phantom", read_phantom, free_phantom, false},
+    {"read a scanner", read_scanner, free_scanner, false},
+    {"simulate", simulate, free_sinogram, false},
+    {"read a sinogram", read_sinogram, free_sinogram, false},
+    {"reconstruct", reconstruct, free_image, false},
+    {"read an image", read_image, free_image, false},
+    {"read a kernel", read_kernel, free_kernel, false},
+    {"add an input", add_input, free_inputs, false},
+    {"write a sinogram", write_sinogram, remove_out, false},
+    {"write an image", write_image, remove_out, false},
+    {"write a PNG", write_png, remove_out, false},
+    {"write JSON", write_json, remove_out, false},
+    {"read a job", read_job, free_job, false},
+    {"evaluate", evaluate, free_evaluation, true},
 };
 
 START_TEST(every_allocation_fails_once)
 {
-    static const max_align_t zero[64];
-    max_align_t out[64]; /* any of the structs */
+    static const max_align_t zero[1024];
+    static max_align_t out[1024]; /* any of the structs */
     for (long n = 0;; n++) {
         tg_error e = {0};
         memset(out, 0, sizeof out);
@@ -176,10 +201,11 @@ START_TEST(every_allocation_fails_once)
         const tg_code code = calls[_i].run(out, &e);
         const bool failed = left < 0;
         left = -1;
-        if (!failed) {
+        if (!failed || (code == TG_OK && calls[_i].predicts)) {
             CK_OK(code);
-            ck_assert_int_gt(n, 0);
             calls[_i].undo(out);
+            if (failed) continue;
+            ck_assert_int_gt(n, 0);
             break;
         }
         ck_assert_msg(code == TG_MACHINE && e.code == TG_MACHINE && e.count == 1,
@@ -208,11 +234,16 @@ static void setup(void)
     CK_OK(tg_inputs_add(&inputs, scratch("phantom.yaml"), &e));
     CK_OK(tg_fits_write_sinogram(scratch("sinogram.fits"), &sinogram, &made, &e));
     CK_OK(tg_fits_write_image(scratch("image.fits"), &image, &made, &e));
+    scratch_write("job.yaml", "job: j\nphantom: phantom.yaml\nscan: sinogram.fits\nreconstructions:\n  - {name: a, "
+                              "pixels: 64, specification: spec.yaml}\n");
+    scratch_write("spec.yaml", tg_embedded_text("spec-rods-disc.yaml"));
+    CK_OK(tg_job_read(scratch("job.yaml"), &job, &e));
     files = scratch_files();
 }
 
 static void teardown(void)
 {
+    tg_job_free(&job);
     tg_inputs_free(&inputs);
     tg_image_free(&image);
     tg_fields_free(tg_recipe_fields, &recipe);
