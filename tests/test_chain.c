@@ -79,7 +79,7 @@ static double disc_mean(const tg_image *image, double x, double y, double radius
     return sum / n;
 }
 
-static void check_rods(const tg_phantom *p, const tg_image *image, const char *name)
+static void check_discs(const tg_phantom *p, const tg_image *image, const char *name)
 {
     tg_error e = {0};
     double mu[64];
@@ -88,22 +88,27 @@ static void check_rods(const tg_phantom *p, const tg_image *image, const char *n
     CK_OK(tg_phantom_mu(p, 70, mu, &e));
     const double water = image->facts.mu_water_per_mm.v;
     size_t rods = 0;
+    double worst_rod = 0, worst_edge = 0;
     for (size_t i = 1; i < p->n_solids; i++) {
         const tg_solid *s = &p->solid[i];
         if (s->shape != TG_CYLINDER || s->half_mm[0] < 8) continue;
         rods++;
+        const double found = disc_mean(image, s->centre_mm[0], s->centre_mm[1], 0.6 * s->half_mm[0]);
+        const double truth = 1000 * (mu[s->material] / water - 1);
+        worst_rod = fmax(worst_rod, fabs(found - truth));
         snprintf(what, sizeof what, "%s, %s against its material", name, s->name.v);
-        CK_NEAR(disc_mean(image, s->centre_mm[0], s->centre_mm[1], 0.6 * s->half_mm[0]),
-                1000 * (mu[s->material] / water - 1), 0, tolerance_hu, what);
+        CK_NEAR(found, truth, 0, tolerance_hu, what);
     }
     ck_assert_uint_ge(rods, 8);
     const double radius = p->solid[0].half_mm[0], at = radius - edge_gap_mm - 0.1 * radius;
     const double middle = disc_mean(image, 0, 0, 0.1 * radius);
     for (int k = 0; k < 4; k++) {
+        const double edge = disc_mean(image, at * cos(k * M_PI / 2), at * sin(k * M_PI / 2), 0.1 * radius);
+        worst_edge = fmax(worst_edge, fabs(edge - middle));
         snprintf(what, sizeof what, "%s, edge region %d against the middle", name, k);
-        CK_NEAR(disc_mean(image, at * cos(k * M_PI / 2), at * sin(k * M_PI / 2), 0.1 * radius), middle, 0, tolerance_hu,
-                what);
+        CK_NEAR(edge, middle, 0, tolerance_hu, what);
     }
+    printf("%-42s rods within %.3f HU, centre to edge within %.3f HU\n", name, worst_rod, worst_edge);
 }
 
 START_TEST(ct_numbers_come_back)
@@ -117,7 +122,7 @@ START_TEST(ct_numbers_come_back)
     char text[512], path[] = "/tmp/chain-XXXXXX";
     CK_OK(tg_phantom_read("phantoms/rods-disc.yaml", &p, &e));
     const int n =
-        snprintf(text, sizeof text, "scanner: test\n%s%sviews: 984\nenergy: 70\naverage: line-integrals\nsubrays: 8\n",
+        snprintf(text, sizeof text, "scanner: test\n%s%sviews: 984\nenergy: 70\naverage: line-integrals\nsubrays: 5\n",
                  cases[_i].geometry, cases[_i].rest);
     CK_OK(tg_scanner_parse(text, (size_t)n, "scanner", &scanner, &e));
     CK_OK(tg_simulate(&p, &scanner, NULL, &s, NULL, &e));
@@ -131,7 +136,7 @@ START_TEST(ct_numbers_come_back)
     recipe.field_mm = (tg_number){212, 1};
     CK_OK(tg_reconstruct(&again, &recipe, NULL, &image, &e));
     ck_assert_int_eq(image.unit, TG_HU);
-    check_rods(&p, &image, cases[_i].name);
+    check_discs(&p, &image, cases[_i].name);
     tg_fields_free(tg_recipe_fields, &recipe);
     tg_image_free(&image);
     tg_sinogram_free(&again);
