@@ -38,7 +38,7 @@ OUR_C := $(wildcard $(addsuffix /*.[ch],$(FLOORS) scripts tests tests/fuzz tests
 all: $(B)/tomogauge $(B)/libtomogauge.a ## all: the program and the library
 
 help: ## help: this list
-	@sed -n 's/^[a-z%-]*:.*## /  make /p' $(MAKEFILE_LIST)
+	@sed -n 's/^[a-z%-]*:.*## //p' $(MAKEFILE_LIST) | awk -F': ' '{ printf "  make %-10s %s\n", $$1, $$2 }'
 
 $(B)/tomogauge: $(PROGRAM_OBJ) $(B)/libtomogauge.a
 	$(CC) $(LD_) $^ $(LIBS_) -o $@

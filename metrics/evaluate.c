@@ -148,7 +148,7 @@ done:
     return code;
 }
 
-static tg_code add_inputs(const tg_job *job, tg_inputs *inputs, tg_error *e)
+tg_code tg_job_inputs(const tg_job *job, tg_inputs *inputs, tg_error *e)
 {
     tg_code code = TG_OK;
     const tg_recipe *recipe = job->reconstructions.v;
@@ -180,7 +180,7 @@ tg_code tg_evaluate(const tg_job *job, const tg_progress *progress, tg_evaluatio
 
     TG_TRY(tg_phantom_read(job->phantom.v, &phantom, &own));
     if (!(out->phantom_name = tg_copy_text(phantom.name.v))) TG_TRY(tg_no_memory(&own, 1, 1));
-    TG_TRY(add_inputs(job, &out->inputs, &own));
+    TG_TRY(tg_job_inputs(job, &out->inputs, &own));
     if (job->scan.v)
         TG_TRY(tg_fits_read_sinogram(job->scan.v, &s, &own));
     else

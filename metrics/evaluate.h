@@ -31,6 +31,9 @@ typedef struct {
     double seconds_scan, peak_mib;
 } tg_evaluation;
 
+/** Every file that a job reads, with its checksum. */
+tg_code tg_job_inputs(const tg_job *job, tg_inputs *inputs, tg_error *e);
+
 /** Do a job in memory; nothing is written. */
 tg_code tg_evaluate(const tg_job *job, const tg_progress *progress, tg_evaluation *out, tg_error *e);
 void tg_evaluation_free(tg_evaluation *ev);

@@ -33,6 +33,7 @@ static tg_code run(tg_call *call, const void *options, tg_error *e)
         code = estimate(&job, e);
         goto done;
     }
+    TG_TRY(tg_evaluation_allowed(&job, call->output, call->force, e));
     TG_TRY(tg_evaluate(&job, call->progress, &ev, e));
     show_remarks(&ev.remarks, e);
     TG_TRY(tg_evaluation_write(&ev, call->output, call->force, e));

@@ -394,23 +394,33 @@ static tg_code join(const char *folder, const char *name, const char *ending, ch
 static const char *const files[] = {"results.json", "results.csv", "run.json", "report.html"};
 
 /** May all names be written? All that may not are told. */
-static tg_code all_allowed(const tg_evaluation *ev, const char *folder, bool force, tg_error *e)
+static tg_code all_allowed(const tg_job *job, const tg_inputs *in, const char *folder, bool force, tg_error *e)
 {
+    const tg_recipe *recipe = job->reconstructions.v;
     static const char *const endings[] = {".fits", ".png"};
     const size_t n_files = sizeof files / sizeof *files;
     char path[PATH];
     const char **inputs;
-    tg_code code = TG_NEW(inputs, ev->inputs.n, e);
-    for (size_t i = 0; inputs && i < ev->inputs.n; i++)
-        inputs[i] = ev->inputs.input[i].path;
-    for (size_t i = 0; inputs && i < n_files + 2 * ev->n; i++) {
+    tg_code code = TG_NEW(inputs, in->n, e);
+    for (size_t i = 0; inputs && i < in->n; i++)
+        inputs[i] = in->input[i].path;
+    for (size_t i = 0; inputs && i < n_files + 2 * job->reconstructions.n; i++) {
         const size_t at = i - n_files; /* beyond the files: two for each image */
         tg_code found = i < n_files ? join(folder, files[i], "", path, e)
-                                    : join(folder, ev->item[at / 2].recipe->name.v, endings[at % 2], path, e);
-        if (found == TG_OK) found = tg_output_allowed(path, force, inputs, ev->inputs.n, e);
+                                    : join(folder, recipe[at / 2].name.v, endings[at % 2], path, e);
+        if (found == TG_OK) found = tg_output_allowed(path, force, inputs, in->n, e);
         if (code == TG_OK) code = found;
     }
     tg_free(inputs);
+    return code;
+}
+
+tg_code tg_evaluation_allowed(const tg_job *job, const char *folder, bool force, tg_error *e)
+{
+    tg_inputs in = {0};
+    tg_code code = tg_job_inputs(job, &in, e);
+    if (code == TG_OK) code = all_allowed(job, &in, folder, force, e);
+    tg_inputs_free(&in);
     return code;
 }
 
@@ -451,7 +461,7 @@ tg_code tg_evaluation_write(const tg_evaluation *ev, const char *folder, bool fo
 {
     tg_code code = TG_OK;
     char *csv = NULL, *html = NULL;
-    TG_TRY(all_allowed(ev, folder, force, e));
+    TG_TRY(all_allowed(ev->job, &ev->inputs, folder, force, e));
     TG_TRY(tg_output_folder(folder, e));
     for (size_t i = 0; i < ev->n; i++)
         TG_TRY(write_images(ev, &ev->item[i], folder, e));

@@ -16,6 +16,9 @@ tg_code tg_results_csv(const tg_evaluation *ev, char **text, tg_error *e);
 /** The verdict and a table for each reconstruction, 80 columns wide. @param text  set on success, tg_free */
 tg_code tg_results_text(const tg_evaluation *ev, char **text, tg_error *e);
 
+/** May everything be written that a job's evaluation writes into a folder? Asked before the work begins. */
+tg_code tg_evaluation_allowed(const tg_job *job, const char *folder, bool force, tg_error *e);
+
 /** Write an evaluation into a folder: images as FITS and PNG, results.json, results.csv, run.json, report.html.
  *  Looks first whether all of them may be written. */
 tg_code tg_evaluation_write(const tg_evaluation *ev, const char *folder, bool force, tg_error *e);

@@ -170,10 +170,12 @@ START_TEST(leaves_foreign_files_alone)
     ck_assert_int_eq(mkdir(scratch("theirs"), 0777), 0);
     scratch_write("theirs/a.png", "a picture of somebody else\n");
     scratch_write("theirs/results.csv", "x,y\n1,2\n");
-    ck_assert_int_ne(tg_evaluation_write(&ev, scratch("theirs"), false, &e), TG_OK);
-    ck_assert_uint_eq(e.count, 2);
+    ck_assert_int_eq(tg_evaluation_allowed(&job, scratch("theirs"), false, &e), TG_USAGE); /* known before the work */
+    ck_assert_int_eq(tg_evaluation_write(&ev, scratch("theirs"), false, &e), TG_USAGE);
+    ck_assert_uint_eq(e.count, 4);
     ck_assert_msg(stat(scratch("theirs/a.fits"), &status), "nothing is written when one is refused");
     e = (tg_error){0};
+    CK_OK(tg_evaluation_allowed(&job, scratch("theirs"), true, &e));
     CK_OK(tg_evaluation_write(&ev, scratch("theirs"), true, &e));
     tg_evaluation_free(&ev);
     tg_job_free(&job);
