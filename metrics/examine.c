@@ -63,8 +63,7 @@ static tg_code measure_once(const examination *x, const tg_measure *m, int solid
     const char *unit = x->options->lp_per_mm ? "lp/mm" : "lp/cm";
     for (size_t i = results; i < out->n_results; i++) {
         tg_result *r = &out->result[i];
-        const tg_measure *what = tg_measure_find(r->measure);
-        if (what && !strcmp(what->unit, "frequency")) say_frequency(r, unit, factor);
+        if (!strcmp(m->unit, "frequency")) say_frequency(r, unit, factor);
         add_water(r, x->options->water_u);
     }
     for (size_t i = curves; i < out->n_curves; i++) {
@@ -133,18 +132,43 @@ static tg_code run_check(const examination *x, const tg_check *c, tg_error *e)
     return TG_OK;
 }
 
+/** Where a result stands: those that are checked first, in the order of their checks, then all others in that of the
+ *  table. */
+static size_t rank(const examination *x, const tg_result *r)
+{
+    const size_t checks = x->specification ? x->specification->checks.n : 0;
+    const tg_check *check = checks ? x->specification->checks.v : NULL;
+    for (size_t i = 0; i < checks; i++)
+        if (!strcmp(r->measure, check[i].measure.v) && !strcmp(r->where, tg_check_solid(&check[i]))) return i;
+    return checks + (size_t)(tg_measure_find(r->measure) - tg_measures);
+}
+
+/** A stable sort by insertion: the results are few and mostly in order. */
+static void put_in_order(const examination *x)
+{
+    tg_result *all = x->out->result;
+    for (size_t i = 1; i < x->out->n_results; i++) {
+        const tg_result r = all[i];
+        const size_t place = rank(x, &r);
+        size_t k = i;
+        for (; k > 0 && rank(x, &all[k - 1]) > place; k--)
+            all[k] = all[k - 1];
+        all[k] = r;
+    }
+}
+
 tg_code tg_examine(const tg_target *t, const tg_specification *s, const tg_examine_options *o, tg_results *out,
                    tg_verdict *verdict, tg_error *e)
 {
     tg_code code = TG_OK;
     *out = (tg_results){0};
     const examination x = {t, s, o, out};
-    /* what is checked comes first, in the order of the specification */
     for (size_t i = 0; s && i < s->checks.n; i++)
         TG_TRY(run_check(&x, (const tg_check *)s->checks.v + i, e));
     for (const tg_measure *m = tg_measures; m->name && !*t->lost; m++)
         for (int solid = 0; solid < (int)t->phantom->n_solids; solid++)
             if (m->applies(t, solid)) TG_TRY(measure_once(&x, m, solid, TG_BY_ANY, e));
+    put_in_order(&x);
     tg_result *water = o->water ? find(out, "ct-number", o->water) : NULL;
     if (water) add_note(water, "defines CT number 0");
     *verdict = *t->lost ? TG_INCONCLUSIVE : TG_NO_LIMITS;

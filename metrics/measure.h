@@ -7,7 +7,8 @@ typedef enum { TG_BY_ANY, TG_BY_WIRE, TG_BY_EDGE } tg_by;
 #define TG_BY_WORDS "wire edge"
 
 /** One measure: a row of the table. A run adds one result or several (and curves, regions) for one solid; a figure that
- *  cannot be had is added as null with a why. It fails only when memory runs out. */
+ *  cannot be had is added as null with a why. Rows that share a run are figures of one curve, and come together. It
+ *  fails only when memory runs out. */
 typedef struct tg_measure {
     const char *name; /* "ct-number" */
     const char *unit; /* "HU": the image's unit; "frequency": the job's; else as written */
@@ -23,15 +24,13 @@ extern const tg_measure tg_measures[]; /* ends with a NULL name */
 
 const tg_measure *tg_measure_find(const char *name);
 
-/* The rows of the table, one file each. Frequencies are 1/mm inside; results.c turns them to the job's unit. */
+/* The runs of the table. Frequencies are 1/mm inside; examine.c turns them to the job's unit. */
 tg_code tg_measure_ct_number(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 tg_code tg_measure_uniformity(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 tg_code tg_measure_cupping(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 tg_code tg_measure_noise(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
-tg_code tg_measure_nps_peak(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
-tg_code tg_measure_nps_mean(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
-tg_code tg_measure_mtf50(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
-tg_code tg_measure_mtf10(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_nps(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
+tg_code tg_measure_mtf(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 tg_code tg_measure_diameter(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 tg_code tg_measure_position(const tg_target *, int solid, tg_by, tg_results *, tg_error *);
 

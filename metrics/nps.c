@@ -349,8 +349,6 @@ static void middle_of(const tg_target *t, const spectrum *s, size_t square, doub
 
 static tg_code add_curve(const tg_target *t, const char *name, const spectrum *s, tg_results *out, tg_error *e)
 {
-    for (size_t i = 0; i < out->n_curves; i++) /* both figures stand on the same curve */
-        if (!strcmp(out->curve[i].measure, "nps") && !strcmp(out->curve[i].where, name)) return TG_OK;
     double variance = 0, mm[2]; /* the middle of a body is noisier than its edge: mean over the squares */
     for (size_t q = 0; q < s->n; q++) {
         middle_of(t, s, q, mm);
@@ -380,61 +378,60 @@ static tg_code add_squares(const tg_target *t, const char *name, const spectrum 
     return code;
 }
 
-static tg_code measure_nps(const tg_target *t, int solid, bool peak, tg_results *out, tg_error *e)
+/** Peak or mean of a spectrum. @param work  {2 FINE + bins} */
+static tg_code add_figure(const tg_target *t, const char *name, const spectrum *s, bool peak, double *work,
+                          tg_results *out, tg_error *e)
+{
+    tg_result *r = tg_results_add(out, peak ? "nps-peak" : "nps-mean", name, "1/mm");
+    double *const slope = work + 2 * FINE, dof;
+    size_t a = 0, b = 0;
+    if (!r) return tg_no_memory(e, 1, sizeof *r);
+    if (s->why[0]) {
+        tg_result_null(r, "%s", s->why);
+        return TG_OK;
+    }
+    r->predicted = expected(t, s, peak, work, work + FINE);
+    memset(slope, 0, s->bins * sizeof *slope);
+    if (!peak)
+        r->value = mean_frequency(s->f, s->s, s->bins, s->nyquist_per_mm, slope);
+    else if (peak_rings(s, &a, &b))
+        r->value = parabola_peak(s, a, b, slope);
+    if (isnan(r->value)) {
+        tg_result_null(r, "the noise power has no peak between 0 and the pixels' Nyquist frequency");
+        return TG_OK;
+    }
+    const double u = scatter(s, slope, &dof);
+    tg_result_budget(r, "noise", u, dof);
+    /* a ring of frequencies, half of it to either side, for a peak that is no parabola */
+    if (peak) tg_result_budget(r, "resolution", s->step_per_mm / sqrt(12), (double)INFINITY);
+    tg_result_combine(r);
+    if (s->s[s->bins - 1] > 0.05 * s->s[largest(s->s, s->bins)])
+        snprintf(r->note, sizeof r->note, "the noise reaches beyond the pixels' Nyquist frequency of %.3g per mm",
+                 s->nyquist_per_mm);
+    return TG_OK;
+}
+
+tg_code tg_measure_nps(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e)
 {
     tg_code code = TG_OK;
     const char *const name = t->phantom->solid[solid].name.v;
     spectrum s = {0};
-    double *slope = NULL, *work = NULL, dof;
-    tg_result *r;
-    TG_TRY(tg_place_result(t, peak ? "nps-peak" : "nps-mean", name, "1/mm", out, &r, e));
-    if (r->why[0]) goto done;
-    if (solid != t->body) {
-        tg_result_null(r, "the noise spectrum is a figure of the phantom's body");
-        goto done;
-    }
-    TG_TRY(measure_spectrum(t, &s, e));
-    if (s.why[0]) {
-        tg_result_null(r, "%s", s.why);
-        goto done;
-    }
-    TG_TRY(TG_NEW(slope, s.bins, e));
-    TG_TRY(TG_NEW(work, 2 * FINE, e));
-    r->predicted = expected(t, &s, peak, work, work + FINE);
-    size_t a = 0, b = 0;
-    if (!peak)
-        r->value = mean_frequency(s.f, s.s, s.bins, s.nyquist_per_mm, slope);
-    else if (peak_rings(&s, &a, &b))
-        r->value = parabola_peak(&s, a, b, slope);
-    if (isnan(r->value)) {
-        tg_result_null(r, "the noise power has no peak between 0 and the pixels' Nyquist frequency");
-    } else {
-        const double u = scatter(&s, slope, &dof);
-        tg_result_budget(r, "noise", u, dof);
-        /* a ring of frequencies, half of it to either side, for a peak that is no parabola */
-        if (peak) tg_result_budget(r, "resolution", s.step_per_mm / sqrt(12), (double)INFINITY);
-        tg_result_combine(r);
-        if (s.s[s.bins - 1] > 0.05 * s.s[largest(s.s, s.bins)])
-            snprintf(r->note, sizeof r->note, "the noise reaches beyond the pixels' Nyquist frequency of %.3g per mm",
-                     s.nyquist_per_mm);
-    }
+    double *work = NULL;
+    (void)by;
+    if (t->lost[0])
+        snprintf(s.why, sizeof s.why, "%s", t->lost);
+    else if (solid != t->body)
+        snprintf(s.why, sizeof s.why, "the noise spectrum is a figure of the phantom's body");
+    else
+        TG_TRY(measure_spectrum(t, &s, e));
+    TG_TRY(TG_NEW(work, 2 * FINE + s.bins, e));
+    TG_TRY(add_figure(t, name, &s, true, work, out, e));
+    TG_TRY(add_figure(t, name, &s, false, work, out, e));
+    if (s.why[0]) goto done;
     TG_TRY(add_curve(t, name, &s, out, e));
     TG_TRY(add_squares(t, name, &s, out, e));
 done:
     spectrum_free(&s);
-    tg_free(slope);
     tg_free(work);
     return code;
-}
-
-tg_code tg_measure_nps_peak(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e)
-{
-    (void)by;
-    return measure_nps(t, solid, true, out, e);
-}
-
-tg_code tg_measure_nps_mean(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e)
-{
-    (void)by;
-    return measure_nps(t, solid, false, out, e);
 }

@@ -116,9 +116,15 @@ static tg_code check_one(const tg_specification *s, size_t at, const tg_phantom 
         code = tg_solid_unknown(phantom, c->in.v ? "in" : "at", c->in.v ? &c->in : &c->at, s->path, e);
     for (size_t i = 0; solid && i < at; i++) {
         const char *other = tg_check_solid(&all[i]);
-        if (other && !strcmp(other, solid) && !strcmp(all[i].measure.v, c->measure.v))
+        const tg_measure *known = tg_measure_find(all[i].measure.v);
+        if (!other || strcmp(other, solid) != 0) continue;
+        if (!strcmp(all[i].measure.v, c->measure.v))
             return tg_fail(e, TG_INPUT, s->path, c->line, "%s of '%s' is checked in line %d already; keep one of them",
                            c->measure.v, tg_show(solid).text, all[i].line);
+        if (m && known && m->run == known->run && (!c->by.line != !all[i].by.line || c->by.v != all[i].by.v))
+            return tg_fail(e, TG_INPUT, s->path, c->line,
+                           "by: the curve of '%s' is measured in one way; write the same here and in line %d",
+                           tg_show(solid).text, all[i].line);
     }
     return code;
 }

@@ -8,8 +8,7 @@ static tg_error e;
 static void take(const tg_target *t, int solid, tg_result r[2])
 {
     tg_results out = {0};
-    CK_OK(tg_measure_mtf50(t, solid, TG_BY_EDGE, &out, &e));
-    CK_OK(tg_measure_mtf10(t, solid, TG_BY_EDGE, &out, &e));
+    CK_OK(tg_measure_mtf(t, solid, TG_BY_EDGE, &out, &e));
     ck_assert_uint_eq(out.n_results, 2);
     ck_assert_uint_le(out.n_curves, 1);
     for (int i = 0; i < 2; i++)

@@ -49,16 +49,18 @@ START_TEST(mean_frequency)
     for (uint64_t draw = 0; draw < DRAWS; draw++) {
         tg_results all = {0};
         CK_OK(synthetic_draw(&s, draw, &c, &e));
-        CK_OK(tg_measure_nps_mean(&c.target, 0, TG_BY_ANY, &all, &e));
-        CK_OK(tg_measure_nps_peak(&c.target, 0, TG_BY_ANY, &all, &e));
+        CK_OK(tg_measure_nps(&c.target, 0, TG_BY_ANY, &all, &e));
         ck_assert_uint_eq(all.n_results, 2);
         ck_assert_uint_eq(all.n_curves, 1);
-        mean += all.result[0].value / DRAWS;
-        covered += fabs(all.result[0].value - truth) <= all.result[0].uncertainty;
-        ck_assert(isnan(all.result[0].predicted)); /* nothing is known of how this image was made */
-        if (!isnan(all.result[1].value)) {
+        const tg_result *top = &all.result[0], *average = &all.result[1];
+        ck_assert_str_eq(top->measure, "nps-peak");
+        ck_assert_str_eq(average->measure, "nps-mean");
+        mean += average->value / DRAWS;
+        covered += fabs(average->value - truth) <= average->uncertainty;
+        ck_assert(isnan(average->predicted)); /* nothing is known of how this image was made */
+        if (!isnan(top->value)) {
             peaks++;
-            near += fabs(all.result[1].value - peak) <= all.result[1].uncertainty;
+            near += fabs(top->value - peak) <= top->uncertainty;
         }
         const tg_curve *p = &all.curve[0];
         for (size_t k = 0; k < p->n; k++) {
@@ -110,7 +112,7 @@ START_TEST(shape)
     for (uint64_t draw = 0; draw < DRAWS; draw++) {
         tg_results all = {0};
         CK_OK(synthetic_draw(&s, draw, &c, &e));
-        CK_OK(tg_measure_nps_mean(&c.target, 0, TG_BY_ANY, &all, &e));
+        CK_OK(tg_measure_nps(&c.target, 0, TG_BY_ANY, &all, &e));
         n = all.curve[0].n;
         ck_assert_uint_le(n, MOST);
         for (size_t k = 0; k < n; k++)
@@ -151,16 +153,19 @@ START_TEST(nothing_to_be_had)
     tg_error e = {0};
     CK_OK(synthetic_make(&s, &c, &e));
     CK_OK(synthetic_draw(&s, 0, &c, &e));
-    CK_OK(tg_measure_nps_mean(&c.target, 1, TG_BY_ANY, &all, &e));
+    CK_OK(tg_measure_nps(&c.target, 1, TG_BY_ANY, &all, &e));
     ck_assert_msg(strstr(all.result[0].why, "body"), "why: %s", all.result[0].why);
     synthetic_free(&c);
     s.solid = small;
     s.solids = 1;
     CK_OK(synthetic_make(&s, &c, &e));
     CK_OK(synthetic_draw(&s, 0, &c, &e));
-    CK_OK(tg_measure_nps_peak(&c.target, 0, TG_BY_ANY, &all, &e));
-    ck_assert(isnan(all.result[1].value));
-    ck_assert_msg(strstr(all.result[1].why, "squares"), "why: %s", all.result[1].why);
+    CK_OK(tg_measure_nps(&c.target, 0, TG_BY_ANY, &all, &e));
+    ck_assert_uint_eq(all.n_results, 4);
+    for (size_t i = 2; i < 4; i++) {
+        ck_assert(isnan(all.result[i].value));
+        ck_assert_msg(strstr(all.result[i].why, "squares"), "why: %s", all.result[i].why);
+    }
     ck_assert_uint_eq(all.n_curves + all.n_regions, 0);
     synthetic_free(&c);
     tg_results_free(&all);

@@ -15,8 +15,7 @@ typedef struct {
 static void take(const Synthetic *s, Taken *t, int solid)
 {
     t->out = (tg_results){0};
-    CK_OK(tg_measure_mtf50(&t->c.target, solid, TG_BY_WIRE, &t->out, &e));
-    CK_OK(tg_measure_mtf10(&t->c.target, solid, TG_BY_WIRE, &t->out, &e));
+    CK_OK(tg_measure_mtf(&t->c.target, solid, TG_BY_WIRE, &t->out, &e));
     ck_assert_uint_eq(t->out.n_results, 2);
     t->half = &t->out.result[0];
     t->tenth = &t->out.result[1];
