@@ -256,6 +256,13 @@ done:
     return code;
 }
 
+tg_code tg_fits_refuse(tg_fits *f, const char *axis, const char *wrong)
+{
+    char type[TG_FITS_WORD];
+    const tg_code code = tg_fits_text(f, "CTYPE1", type, sizeof type);
+    return code == TG_OK && !strcasecmp(type, axis) ? tg_fail(f->e, TG_INPUT, f->path, 0, "%s", wrong) : code;
+}
+
 tg_code tg_fits_create(tg_fits *f, const char *path, int axes, const size_t n[3], tg_error *e)
 {
     tg_code code = TG_OK;

@@ -31,6 +31,9 @@ tg_code tg_fits_number(tg_fits *f, const char *key, double *v);
 /** A keyword's text; "" where it is absent. TG_INPUT: not a text, or longer than size - 1. */
 tg_code tg_fits_text(tg_fits *f, const char *key, char *text, size_t size);
 
+/** Fails with what is wrong where the first axis (CTYPE1) is that of another kind of file. */
+tg_code tg_fits_refuse(tg_fits *f, const char *axis, const char *wrong);
+
 /** All samples of the image HDU with BSCALE and BZERO applied, after its DATASUM has been checked; NaN for BLANK.
  *  @param v  {n[2], n[1], n[0]} */
 tg_code tg_fits_samples(tg_fits *f, float *v);

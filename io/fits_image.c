@@ -200,6 +200,7 @@ tg_code tg_fits_read_image(const char *path, tg_image *out, tg_error *e)
     double size;
     *out = (tg_image){0};
     TG_TRY(tg_fits_open(&f, path, e));
+    TG_TRY(tg_fits_refuse(&f, "CHANNEL", "is a sinogram; an image is expected here: reconstruct it first"));
     if (f.axes < 2) TG_TRY(tg_fail(e, TG_INPUT, path, 0, "has one axis; an image has two or three"));
     TG_TRY(read_unit(&f, &unit, &size));
     TG_TRY(read_grid(&f, &grid));

@@ -340,6 +340,7 @@ tg_code tg_fits_read_sinogram(const char *path, tg_sinogram *out, tg_error *e)
     meaning m = LINE_INTEGRAL;
     *out = (tg_sinogram){0};
     TG_TRY(tg_fits_open(&f, path, e));
+    TG_TRY(tg_fits_refuse(&f, "X", "is an image; a sinogram is expected here"));
     if (f.axes < 2) TG_TRY(tg_fail(e, TG_INPUT, path, 0, "has one axis; a sinogram has channels and views"));
     TG_TRY(read_scan(&f, &scan, &view));
     TG_TRY(read_meaning(&f, &m));

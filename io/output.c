@@ -42,10 +42,60 @@ static bool is_own(const char *path)
     return false;
 }
 
+/* Length of the folder's part of a path, its last slash included. */
+static int folder_length(const char *path)
+{
+    const char *slash = strrchr(path, '/');
+    return slash ? (int)(slash + 1 - path) : 0;
+}
+
+static tg_code fail_write(const char *path, tg_error *e)
+{
+    const int why = errno;
+    if (why == ENOENT || why == ENOTDIR)
+        return tg_fail(e, TG_USAGE, path, 0, "its folder does not exist; make it first");
+    return tg_fail(e, TG_MACHINE, path, 0, "cannot write: %s", strerror(why));
+}
+
+/* Is a new file possible? The folder is looked at by its "." so that a file of its name is none. */
+static tg_code check_folder_of(const char *path, tg_error *e)
+{
+    const int n = folder_length(path);
+    const size_t bytes = (size_t)n + 2;
+    char *folder = tg_alloc(bytes, 1);
+    if (!folder) return tg_no_memory(e, bytes, 1);
+    snprintf(folder, bytes, "%.*s.", n, path);
+    const tg_code code = access(folder, W_OK | X_OK) ? fail_write(path, e) : TG_OK;
+    tg_free(folder);
+    return code;
+}
+
+tg_code tg_output_folder_allowed(const char *path, tg_error *e)
+{
+    struct stat st;
+    tg_code code = TG_OK;
+    char *part = tg_copy_text(path);
+    if (!part) return tg_no_memory(e, 1, strlen(path));
+    for (;;) { /* up to what stands already */
+        size_t n = strlen(part);
+        while (n > 1 && part[n - 1] == '/')
+            n--;
+        part[n] = '\0';
+        if (!n || !stat(part, &st)) break;
+        part[folder_length(part)] = '\0';
+    }
+    if (*part && !S_ISDIR(st.st_mode))
+        code = tg_fail(e, TG_USAGE, part, 0, "cannot make the folder: a file of that name stands there");
+    else if (access(*part ? part : ".", W_OK | X_OK))
+        code = tg_fail(e, TG_MACHINE, path, 0, "cannot make the folder: %s", strerror(errno));
+    tg_free(part);
+    return code;
+}
+
 tg_code tg_output_allowed(const char *path, bool force, const char *const *inputs, size_t n, tg_error *e)
 {
     struct stat out, in;
-    if (stat(path, &out)) return TG_OK; /* nothing there; a missing folder is told when writing begins */
+    if (stat(path, &out)) return check_folder_of(path, e);
     if (!S_ISREG(out.st_mode)) return tg_fail(e, TG_USAGE, path, 0, "is not a plain file; write to another name");
     if (force) return TG_OK;
     for (size_t i = 0; i < n; i++)
@@ -54,21 +104,6 @@ tg_code tg_output_allowed(const char *path, bool force, const char *const *input
     if (out.st_size == 0 || is_own(path)) return TG_OK;
     return tg_fail(e, TG_USAGE, path, 0,
                    "stands already and was not written by " TG_PROGRAM "; write to another name, or add --force");
-}
-
-/* Length of the folder's part of a path, its last slash included. */
-static int folder_length(const char *path)
-{
-    const char *slash = strrchr(path, '/');
-    return slash ? (int)(slash + 1 - path) : 0;
-}
-
-static tg_code fail_open(const char *path, tg_error *e)
-{
-    const int why = errno;
-    if (why == ENOENT || why == ENOTDIR)
-        return tg_fail(e, TG_USAGE, path, 0, "its folder does not exist; make it first");
-    return tg_fail(e, TG_MACHINE, path, 0, "cannot write: %s", strerror(why));
 }
 
 tg_code tg_output_begin(const char *path, tg_output *o, tg_error *e)
@@ -92,7 +127,7 @@ tg_code tg_output_begin(const char *path, tg_output *o, tg_error *e)
         if (file < 0 && errno != EEXIST) break;
     }
     if (file < 0) {
-        code = fail_open(path, e);
+        code = fail_write(path, e);
         tg_free(o->beside); /* another's, or none */
         o->beside = NULL;
         goto done;

@@ -1,5 +1,6 @@
 #include "io/yaml.h"
 
+#include "io/fits.h"
 #include "io/input.h"
 #include "io/memory.h"
 
@@ -240,6 +241,23 @@ done:
     tg_free(seen);
 }
 
+/* Another description than the one wanted would draw a message for every key: tell it once. */
+static tg_code check_kind(reader *r, const yaml_node_t *root, const tg_field *fields)
+{
+    size_t known = 0, unknown = 0;
+    const yaml_node_pair_t *first = root->data.mapping.pairs.start;
+    for (const yaml_node_pair_t *pair = first; pair < root->data.mapping.pairs.top; pair++) {
+        const yaml_node_t *key = node_at(r, pair->key);
+        const bool found = key->type == YAML_SCALAR_NODE && tg_fields_find(fields, scalar(key));
+        known += found;
+        unknown += !found;
+    }
+    if (unknown < 2 || unknown <= known || node_at(r, first->key)->type != YAML_SCALAR_NODE) return TG_OK;
+    return tg_fail(r->e, TG_INPUT, r->file, line_of(root),
+                   "is not a description of a %s: it begins with '%s', and most of its keys are not known here",
+                   first_key(fields), tg_show(scalar(node_at(r, first->key))).text);
+}
+
 static tg_code start(yaml_parser_t *parser, const char *text, size_t bytes, tg_error *e)
 {
     if (!yaml_parser_initialize(parser)) return tg_no_memory(e, 1, sizeof *parser);
@@ -266,6 +284,7 @@ tg_code tg_yaml_parse(const char *text, size_t bytes, const char *name, const tg
         TG_TRY(tg_fail(e, TG_INPUT, name, line_of(root), "a description is a mapping, such as `%s: ...`",
                        first_key(fields)));
     reader r = {&document, name, e, TG_OK};
+    TG_TRY(check_kind(&r, root, fields));
     read_mapping(&r, root, fields, out);
     code = r.code;
     if (code != TG_OK) tg_fields_free(fields, out);
@@ -280,6 +299,8 @@ tg_code tg_yaml_read(const char *path, const tg_field *fields, void *out, tg_err
     char *text = NULL;
     size_t bytes;
     tg_code code = TG_OK;
+    if (tg_fits_magic(path))
+        return tg_fail(e, TG_INPUT, path, 0, "is a FITS file; a description in YAML is expected here");
     TG_TRY(tg_read_file(path, MOST_BYTES, &text, &bytes, e));
     TG_TRY(tg_yaml_parse(text, bytes, path, fields, out, e));
 done:

@@ -29,11 +29,11 @@ static tg_code run(tg_call *call, const void *options, tg_error *e)
     tg_evaluation ev = {0};
     char *text = NULL;
     TG_TRY(tg_job_read(call->operand[0], &job, e));
+    if (call->output) TG_TRY(tg_evaluation_allowed(&job, call->output, call->force, e));
     if (call->check) {
         code = estimate(&job, e);
         goto done;
     }
-    TG_TRY(tg_evaluation_allowed(&job, call->output, call->force, e));
     TG_TRY(tg_evaluate(&job, call->progress, &ev, e));
     show_remarks(&ev.remarks, e);
     TG_TRY(tg_evaluation_write(&ev, call->output, call->force, e));

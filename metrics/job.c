@@ -72,21 +72,6 @@ static tg_code resolve_kernel(const char *job, tg_text *kernel, tg_error *e)
     return TG_OK;
 }
 
-static tg_code check_kernel(const tg_job *job, const tg_recipe *r, tg_error *e)
-{
-    tg_error own = {0};
-    tg_kernel kernel = {0};
-    const tg_code code = r->kernel.v ? tg_kernel_read(r->kernel.v, &kernel, &own) : TG_OK;
-    tg_kernel_free(&kernel);
-    for (size_t i = 0; i < own.count && i < TG_MESSAGES; i++) {
-        const tg_message *m = &own.message[i];
-        const bool placed = *m->file && m->line; /* a line of the kernel's own file says more than the job's */
-        tg_fail(e, code, placed ? m->file : job->path, placed ? m->line : r->kernel.line, "%s%s",
-                placed ? "" : "kernel: ", m->what);
-    }
-    return code;
-}
-
 /** A name becomes the name of files. */
 static tg_code check_name(const tg_job *job, size_t at, tg_error *e)
 {
@@ -155,7 +140,7 @@ static tg_code check_recipe(tg_job *job, size_t at, const tg_phantom *phantom, t
     tg_recipe *r = (tg_recipe *)job->reconstructions.v + at;
     tg_code code = resolve_kernel(job->path, &r->kernel, e);
     tg_note(&code, check_name(job, at, e));
-    tg_note(&code, check_kernel(job, r, e));
+    tg_note(&code, tg_recipe_check(r, job->path, e));
     if (!specification_seen(job, at)) tg_note(&code, check_specification(r->specification.v, phantom, e));
     if (job->water.v && r->mu_water_per_mm.line)
         tg_note(&code,

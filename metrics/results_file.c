@@ -17,6 +17,7 @@
 #include <string.h>
 #include <sys/utsname.h>
 #include <time.h>
+#include <unistd.h>
 
 #ifndef TG_LIBRARIES
 #define TG_LIBRARIES "not recorded by this build"
@@ -400,17 +401,21 @@ static tg_code all_allowed(const tg_job *job, const tg_inputs *in, const char *f
     static const char *const endings[] = {".fits", ".png"};
     const size_t n_files = sizeof files / sizeof *files;
     char path[PATH];
-    const char **inputs;
-    tg_code code = TG_NEW(inputs, in->n, e);
-    for (size_t i = 0; inputs && i < in->n; i++)
+    const char **inputs = NULL;
+    tg_code code = TG_OK;
+    TG_TRY(tg_output_folder_allowed(folder, e));
+    if (access(folder, F_OK)) goto done; /* nothing stands in the way */
+    TG_TRY(TG_NEW(inputs, in->n, e));
+    for (size_t i = 0; i < in->n; i++)
         inputs[i] = in->input[i].path;
-    for (size_t i = 0; inputs && i < n_files + 2 * job->reconstructions.n; i++) {
+    for (size_t i = 0; i < n_files + 2 * job->reconstructions.n; i++) {
         const size_t at = i - n_files; /* beyond the files: two for each image */
         tg_code found = i < n_files ? join(folder, files[i], "", path, e)
                                     : join(folder, recipe[at / 2].name.v, endings[at % 2], path, e);
         if (found == TG_OK) found = tg_output_allowed(path, force, inputs, in->n, e);
-        if (code == TG_OK) code = found;
+        tg_note(&code, found);
     }
+done:
     tg_free(inputs);
     return code;
 }

@@ -96,7 +96,9 @@ static void show_scan(const tg_scan *s)
     line("centre of rotation", "channel %.6g", s->channel_zero + 1);
     line("field of view", "radius %.5g mm", tg_scan_field_radius_mm(s));
     const double first = s->angle_rad[0] * DEGREES, last = s->angle_rad[s->views - 1] * DEGREES;
-    if (s->views > 1 && regular(s))
+    if (s->views == 1)
+        line("views", "1 at %.6g deg", first);
+    else if (regular(s))
         line("views", "%zu from %.6g deg in steps of %.6g deg", s->views, first,
              (last - first) / (double)(s->views - 1));
     else

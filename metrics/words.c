@@ -2,6 +2,7 @@
 
 #include <math.h>
 #include <stdio.h>
+#include <stdlib.h>
 
 /* Decimal places that show two digits of u. */
 static int places(double u)
@@ -15,12 +16,19 @@ static bool usable(double u)
     return u > 0 && isfinite(u);
 }
 
+/** A value in decimals; one that is 0 in all of them has no sign. */
+static void decimals(int n, double value, char *out)
+{
+    snprintf(out, TG_WORDS, "%.*f", n, value);
+    if (strtod(out, NULL) == 0) snprintf(out, TG_WORDS, "%.*f", n, 0.0);
+}
+
 void tg_words_value(double value, double uncertainty, char *out)
 {
     if (isnan(value))
         snprintf(out, TG_WORDS, "-");
     else if (usable(uncertainty) && places(uncertainty) < 12)
-        snprintf(out, TG_WORDS, "%.*f", places(uncertainty), value);
+        decimals(places(uncertainty), value, out);
     else
         snprintf(out, TG_WORDS, "%.5g", value);
 }

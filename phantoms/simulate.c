@@ -102,6 +102,15 @@ static tg_code set_text(tg_text *t, const char *value, tg_error *e)
     return t->v ? TG_OK : tg_no_memory(e, 1, 1);
 }
 
+/* Attenuations alone are the same at every energy, and CT numbers mean nothing among them. */
+static bool speaks_of_water(const tg_phantom *p)
+{
+    bool speaks = false;
+    for (size_t i = 0; i < p->n_materials; i++)
+        speaks = speaks || isnan(p->material[i].mu_per_mm);
+    return speaks;
+}
+
 static tg_code set_facts(const tg_phantom *p, const tg_scanner *s, tg_facts *f, tg_error *e)
 {
     tg_code code = TG_OK;
@@ -111,8 +120,10 @@ static tg_code set_facts(const tg_phantom *p, const tg_scanner *s, tg_facts *f, 
         f->seed = (tg_number){s->seed, 1};
     }
     if (s->aperture > 0) f->aperture_mm = (tg_number){s->aperture * tg_scan_pitch_mm(&s->scan), 1};
-    TG_TRY(tg_water_mu(s->energy_kev, &f->mu_water_per_mm.v, e));
-    f->mu_water_per_mm.line = 1;
+    if (speaks_of_water(p)) {
+        TG_TRY(tg_water_mu(s->energy_kev, &f->mu_water_per_mm.v, e));
+        f->mu_water_per_mm.line = 1;
+    }
     TG_TRY(set_text(&f->phantom, p->name.v, e));
     TG_TRY(set_text(&f->scanner, s->name.v, e));
 done:

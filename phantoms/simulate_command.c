@@ -56,7 +56,6 @@ static tg_code simulate(const tg_call *call, const options *o, const tg_phantom 
     tg_simulated simulated;
     tg_inputs inputs = {0};
     char parameters[512];
-    TG_TRY(tg_output_allowed(call->output, call->force, call->operand, 2, e));
     TG_TRY(tg_inputs_add(&inputs, call->operand[0], e));
     TG_TRY(tg_inputs_add(&inputs, call->operand[1], e));
     TG_TRY(tg_simulate(p, s, call->progress, &made, &simulated, e));
@@ -64,7 +63,8 @@ static tg_code simulate(const tg_call *call, const options *o, const tg_phantom 
     const tg_provenance how = {"simulate", parameters, &inputs};
     TG_TRY(tg_fits_write_sinogram(call->output, &made, &how, e));
     if (simulated.zero_counts)
-        tg_warn(e, NULL, 0, "%zu rays had no photon at all and count as half a photon; more photons would be needed",
+        tg_warn(e, call->output, 0,
+                "%zu rays had no photon at all and count as half a photon; more photons would be needed",
                 simulated.zero_counts);
     printf("%s: %s by %s, %zu x %zu x %zu samples (slices, views, channels) at %g keV", call->output, p->name.v,
            s->name.v, s->scan.rows, s->scan.views, s->scan.channels, s->energy_kev);
@@ -86,6 +86,7 @@ static tg_code run(tg_call *call, const void *given, tg_error *e)
     const tg_code phantom = tg_phantom_read(call->operand[0], &p, e),
                   scanner = tg_scanner_read(call->operand[1], &s, e);
     tg_code code = phantom != TG_OK ? phantom : scanner; /* errors of both files are told */
+    if (code == TG_OK && call->output) code = tg_output_allowed(call->output, call->force, call->operand, 2, e);
     if (code == TG_OK) {
         override(o, &s);
         code = call->check ? estimate(&p, &s, e) : simulate(call, o, &p, &s, e);

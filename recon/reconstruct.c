@@ -3,9 +3,11 @@
 #include "io/memory.h"
 #include "recon/backproject.h"
 #include "recon/filter.h"
+#include "recon/kernel.h"
 #include "recon/weights.h"
 
 #include <math.h>
+#include <stdio.h>
 #include <string.h>
 
 static tg_code backproject_slice(const tg_backprojector *b, const float *filtered, size_t z, tg_image *image,
@@ -58,6 +60,24 @@ done:
 }
 
 static tg_method *const methods[] = {fbp}; /* in the order of TG_METHODS */
+
+tg_code tg_recipe_check(const tg_recipe *r, const char *file, tg_error *e)
+{
+    tg_error own = {0};
+    tg_kernel kernel = {0};
+    tg_code code = tg_kernel_read(r->kernel.v, &kernel, &own);
+    tg_kernel_free(&kernel);
+    for (size_t i = 0; i < own.count && i < TG_MESSAGES; i++) {
+        const tg_message *m = &own.message[i];
+        if (*m->file) { /* a kernel's own file says more */
+            tg_fail(e, code, m->file, m->line, "%s", m->what);
+            continue;
+        }
+        if (!file && code == TG_INPUT) code = TG_USAGE;
+        tg_fail(e, code, file, file ? r->kernel.line : 0, "%skernel: %s", file ? "" : "--", m->what);
+    }
+    return code;
+}
 
 static tg_code check_finite(const tg_sinogram *s, tg_error *e)
 {

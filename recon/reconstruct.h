@@ -18,6 +18,11 @@ typedef tg_code tg_method(const tg_sinogram *s, const tg_recipe *r, tg_image *im
 tg_code tg_reconstruct(const tg_sinogram *s, const tg_recipe *r, const tg_progress *progress, tg_image *image,
                        tg_error *e);
 
+/** What the table of keys cannot know: is there such a kernel? Told with its key and line.
+ *  @param file  the description they stand in; NULL: they are options
+ *  @return TG_OK, TG_INPUT, TG_USAGE for options, TG_MACHINE */
+tg_code tg_recipe_check(const tg_recipe *r, const char *file, tg_error *e);
+
 /** Turn an image in 1/mm to HU in place: 1000 (mu - mu_water) / mu_water. */
 void tg_to_hu(tg_image *image, double mu_water_per_mm);
 

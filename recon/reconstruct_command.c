@@ -42,7 +42,6 @@ static tg_code reconstruct(const tg_call *call, const tg_sinogram *s, const tg_r
     tg_image image = {0};
     tg_inputs inputs = {0};
     char parameters[512], text[64];
-    TG_TRY(tg_output_allowed(call->output, call->force, call->operand, 1, e));
     TG_TRY(tg_inputs_add(&inputs, call->operand[0], e));
     TG_TRY(tg_reconstruct(s, r, call->progress, &image, e));
     tg_fields_text(tg_recipe_fields, r, parameters, sizeof parameters);
@@ -56,13 +55,30 @@ done:
     return code;
 }
 
+/** What a scan cannot give is said of its file. */
+static void hand_on(const tg_error *own, const char *scan, tg_error *e)
+{
+    for (size_t i = 0; i < own->count && i < TG_MESSAGES; i++) {
+        const tg_message *m = &own->message[i];
+        const char *file = *m->file || own->code != TG_INPUT ? m->file : scan;
+        if (m->warning)
+            tg_warn(e, file, m->line, "%s", m->what);
+        else
+            tg_fail(e, own->code, file, m->line, "%s", m->what);
+    }
+}
+
 static tg_code run(tg_call *call, const void *options, tg_error *e)
 {
     const tg_recipe *r = options;
     tg_sinogram s = {0};
+    tg_error own = {0};
     tg_code code = TG_OK;
+    TG_TRY(tg_recipe_check(r, NULL, e));
+    if (call->output) TG_TRY(tg_output_allowed(call->output, call->force, call->operand, 1, e));
     TG_TRY(tg_fits_read_sinogram(call->operand[0], &s, e));
-    code = call->check ? estimate(&s, r, e) : reconstruct(call, &s, r, e);
+    code = call->check ? estimate(&s, r, &own) : reconstruct(call, &s, r, &own);
+    hand_on(&own, call->operand[0], e);
 done:
     tg_sinogram_free(&s);
     return code;

@@ -166,9 +166,9 @@ END_TEST
 
 START_TEST(messages_are_plain_lines_and_counted)
 {
-    char text[4096] = "";
+    char text[4096] = "phantom: p\nmaterials:\n  - name: water\n";
     for (int i = 0; i < 30; i++)
-        snprintf(text + strlen(text), sizeof text - strlen(text), "\"\\e[2J\\n%d\": 1\n", i);
+        snprintf(text + strlen(text), sizeof text - strlen(text), "    \"\\e[2J\\n%d\": 1\n", i);
     scratch_write("p.yaml", text);
     ck_assert_int_eq(run("simulate p.yaml $PHANTOMS/scanner-parallel.yaml -o s.fits"), 3);
     int lines = 0;
@@ -358,6 +358,46 @@ START_TEST(a_scan_becomes_an_image_and_a_picture)
 }
 END_TEST
 
+/* Files that stand where others belong: one line says what the file is. */
+static const struct {
+    const char *command;
+    int status;
+    const char *says;
+} swapped[] = {
+    {"simulate scanner.yaml scanner.yaml -o x.fits", 3, "scanner.yaml:1: is not a description of a phantom"},
+    {"simulate s.fits scanner.yaml -o x.fits", 3, "s.fits: is a FITS file; a description in YAML is expected here"},
+    {"simulate . scanner.yaml -o x.fits", 3, ".: is not a file"},
+    {"reconstruct i.fits -o x.fits", 3, "i.fits: is an image; a sinogram is expected here"},
+    {"measure s.fits --phantom p.yaml", 3, "s.fits: is a sinogram; an image is expected here: reconstruct it first"},
+    {"evaluate p.yaml -o x", 3, "p.yaml:1: is not a description of a job"},
+    {"reconstruct one.fits -o x.fits", 3, "one.fits: no view between"},
+    {"reconstruct s.fits --kernel han -o x.fits", 2, "--kernel: 'han' is no window"},
+    {"reconstruct s.fits --method fpb -o x.fits", 2, "--method: 'fpb' is not known; did you mean 'fbp'?"},
+    /* told before the work, not after it */
+    {"reconstruct none.fits -o none/x.fits", 2, "none/x.fits: its folder does not exist"},
+    {"reconstruct none.fits -o p.yaml", 2, "p.yaml: stands already"},
+    {"evaluate job.yaml --check -o p.yaml", 2, "p.yaml: cannot make the folder: a file of that name stands there"},
+    {"evaluate job.yaml --check -o p.yaml/x", 2, "p.yaml: cannot make the folder: a file of that name stands there"},
+};
+
+START_TEST(swapped_files_are_told_in_one_line)
+{
+    scratch_write("p.yaml", "phantom: p\nmaterials: [{name: water, hu: 0}]\n"
+                            "solids: [{name: body, shape: cylinder, material: water, radius: 50, length: 20}]\n");
+    scratch_write("scanner.yaml", "scanner: small\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 90\narc: 180\n");
+    scratch_write("one.yaml", "scanner: one\ngeometry: parallel\nchannels: 64\npitch: 4\nviews: 1\n");
+    scratch_write("job.yaml", "job: j\nphantom: p.yaml\nscanner: scanner.yaml\nreconstructions: [{name: a}]\n");
+    ck_assert_int_eq(run("simulate p.yaml scanner.yaml -o s.fits"), 0);
+    ck_assert_int_eq(run("simulate p.yaml one.yaml -o one.fits"), 0);
+    ck_assert_int_eq(run("reconstruct s.fits --pixels 16 -o i.fits"), 0);
+    ck_assert_int_eq(run(swapped[_i].command), swapped[_i].status);
+    ck_assert_msg(!strncmp(err, TG_PROGRAM ": ", 11) && !strncmp(err + 11, swapped[_i].says, strlen(swapped[_i].says)),
+                  "%s\nsays %s", swapped[_i].command, err);
+    ck_assert_ptr_eq(strchr(err, '\n') + 1, strchr(err, '\0'));
+    ck_assert_int_ne(access("x.fits", F_OK), 0);
+}
+END_TEST
+
 /* Exit statuses of a job: the scan is water, so 0 HU passes, 100 HU fails, and a body is no wire. */
 static const struct {
     const char *check, *verdict;
@@ -407,6 +447,7 @@ Suite *suite_commands(void)
     tcase_add_test(tcase, show_prints_examples);
     tcase_add_test(tcase, show_knows_other_files_and_refuses_the_rest);
     tcase_add_test(tcase, a_scan_becomes_an_image_and_a_picture);
+    tcase_add_loop_test(tcase, swapped_files_are_told_in_one_line, 0, sizeof swapped / sizeof *swapped);
     tcase_add_loop_test(tcase, the_verdict_is_the_exit_status, 0, sizeof judged / sizeof *judged);
     tcase_add_test(tcase, an_interrupt_cleans_up_and_ends_as_interrupts_do);
     return suite;

@@ -122,7 +122,9 @@ END_TEST
 
 START_TEST(facts)
 {
-    tg_sinogram s = scan(DISC, PARALLEL "energy: 60\nphotons: 1000\nseed: 9\n", NULL);
+    tg_sinogram s = scan("phantom: disc\nmaterials: [{name: a, mu: 0.02}, {name: b, hu: 30}]\nsolids:\n"
+                         "  - {name: body, shape: cylinder, material: a, radius: 60, length: 20}\n",
+                         PARALLEL "energy: 60\nphotons: 1000\nseed: 9\n", NULL);
     double water;
     tg_error e = {0};
     CK_OK(tg_water_mu(60, &water, &e));
@@ -137,6 +139,7 @@ START_TEST(facts)
     tg_sinogram_free(&s);
     s = scan(DISC, PARALLEL "aperture: 0\n", NULL);
     ck_assert(isnan(s.facts.photons_per_ray.v) && isnan(s.facts.seed.v) && isnan(s.facts.aperture_mm.v));
+    ck_assert(isnan(s.facts.mu_water_per_mm.v)); /* all materials are plain attenuations */
     tg_sinogram_free(&s);
 }
 END_TEST

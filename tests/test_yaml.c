@@ -195,11 +195,24 @@ END_TEST
 
 START_TEST(more_faults_than_messages_are_counted)
 {
-    char text[2000] = "thing: a\nparts: [{name: b}]\n";
+    char text[2000] = "thing: a\nparts:\n  - name: b\n";
     for (int i = 0; i < 100; i++)
-        snprintf(text + strlen(text), sizeof text - strlen(text), "key%d: 1\n", i);
+        snprintf(text + strlen(text), sizeof text - strlen(text), "    key%d: 1\n", i);
     ck_assert_int_eq(parse(text), TG_INPUT);
     ck_assert_uint_eq(e.count, 100);
+}
+END_TEST
+
+START_TEST(another_description_is_told_once)
+{
+    ck_assert_int_eq(parse("scan: s\ngadget: a\ncolour: red\nweight: 3\n"), TG_INPUT);
+    ck_assert_uint_eq(e.count, 1);
+    ck_assert_int_eq(e.message[0].line, 1);
+    ck_assert_ptr_nonnull(strstr(e.message[0].what, "not a description of a thing"));
+    ck_assert_ptr_nonnull(strstr(e.message[0].what, "begins with 'scan'"));
+    e = (tg_error){0};
+    ck_assert_int_eq(parse("thing: a\nscan: s\ngadget: a\ncolour: red\n"), TG_INPUT); /* as many are known */
+    ck_assert_uint_eq(e.count, 3);
 }
 END_TEST
 
@@ -278,6 +291,7 @@ Suite *suite_yaml(void)
     tcase_add_test(tcase, what_is_no_yaml_is_told_with_its_line);
     tcase_add_test(tcase, all_faults_of_a_file_are_told_in_order);
     tcase_add_test(tcase, more_faults_than_messages_are_counted);
+    tcase_add_test(tcase, another_description_is_told_once);
     tcase_add_test(tcase, nesting_stops_at_fifty);
     tcase_add_test(tcase, sizes_are_bounded);
     tcase_add_test(tcase, a_file_is_read);
