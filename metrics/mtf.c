@@ -2,7 +2,6 @@
 
 #include "io/memory.h"
 #include "metrics/noise.h"
-#include "metrics/theory.h"
 
 #include <gsl/gsl_linalg.h>
 #include <math.h>
@@ -298,7 +297,7 @@ static double beyond(const tg_target *t, const tg_mtf *out, double f)
 {
     const double pitch = t->image->scan.channels ? tg_scan_pitch_mm(&t->image->scan) : (double)NAN;
     const double base = fabs(f - round(f * pitch) / pitch);
-    const double repeated = tg_theory_mtf(t->image, base) * base / f * pow(sinc(f * pitch) / sinc(base * pitch), 3);
+    const double repeated = tg_theory_mtf(&t->theory, base) * base / f * pow(sinc(f * pitch) / sinc(base * pitch), 3);
     if (isfinite(repeated)) return fabs(repeated);
     const int i = isnan(out->level[TG_MTF_TENTH].f_per_mm) ? TG_MTF_HALF : TG_MTF_TENTH;
     return pow(tg_mtf_level_of[i], pow(f / out->level[i].f_per_mm, 2));

@@ -2,7 +2,6 @@
 #include "metrics/measure.h"
 #include "metrics/noise.h"
 #include "metrics/place.h"
-#include "metrics/theory.h"
 
 #include <gsl/gsl_cdf.h>
 #include <math.h>
@@ -56,7 +55,7 @@ tg_code tg_measure_noise(const tg_target *t, int solid, tg_by by, tg_results *ou
     TG_TRY(tg_place_result(t, "noise", t->phantom->solid[solid].name.v, tg_unit_text(t->unit), out, &r, e));
     if (r->why[0]) goto done;
     TG_TRY(place_noise(t, solid, &place, e));
-    r->predicted = tg_theory_sd(t->image, tg_noise_line_variance(t, place.region.centre_mm));
+    r->predicted = tg_theory_sd(&t->theory, tg_noise_line_variance(t, place.region.centre_mm));
     if (place.why[0]) {
         tg_result_null(r, "%s", place.why);
         goto done;

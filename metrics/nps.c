@@ -2,7 +2,6 @@
 #include "metrics/measure.h"
 #include "metrics/noise.h"
 #include "metrics/place.h"
-#include "metrics/theory.h"
 #include "recon/fft.h"
 
 #include <complex.h>
@@ -334,7 +333,7 @@ static double expected(const tg_target *t, const spectrum *s, bool peak, double 
 {
     for (size_t i = 0; i < FINE; i++) {
         f[i] = s->nyquist_per_mm * (double)(i + 1) / FINE;
-        theory[i] = tg_theory_nps(t->image, 1, f[i]);
+        theory[i] = tg_theory_nps(&t->theory, 1, f[i]);
         if (isnan(theory[i])) return NAN;
     }
     return peak ? f[largest(theory, FINE)] : mean_frequency(f, theory, FINE, s->nyquist_per_mm, NULL);
@@ -354,13 +353,13 @@ static tg_code add_curve(const tg_target *t, const char *name, const spectrum *s
         middle_of(t, s, q, mm);
         variance += tg_noise_line_variance(t, mm) / (double)s->n;
     }
-    const bool known = isfinite(tg_theory_nps(t->image, variance, s->f[0]));
+    const bool known = isfinite(tg_theory_nps(&t->theory, variance, s->f[0]));
     tg_curve *c = tg_results_add_curve(out, "nps", name, "1/mm", t->unit == TG_HU ? "HU^2 mm^2" : "", s->bins, known);
     if (!c) return tg_no_memory(e, s->bins, 3 * sizeof(double));
     for (size_t k = 0; k < s->bins; k++) {
         c->x[k] = s->f[k];
         c->y[k] = s->s[k];
-        if (known) c->predicted[k] = tg_theory_nps(t->image, variance, s->f[k]);
+        if (known) c->predicted[k] = tg_theory_nps(&t->theory, variance, s->f[k]);
     }
     return TG_OK;
 }

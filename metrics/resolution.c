@@ -2,7 +2,6 @@
 #include "io/memory.h"
 #include "metrics/measure.h"
 #include "metrics/mtf.h"
-#include "metrics/theory.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -18,13 +17,13 @@ static tg_code measure_curve(const tg_target *t, int solid, tg_by by, tg_mtf *mt
 
 static tg_code add_curve(const tg_target *t, const char *where, const tg_mtf *mtf, tg_results *out, tg_error *e)
 {
-    const bool predicted = isfinite(tg_theory_mtf(t->image, 0));
+    const bool predicted = isfinite(tg_theory_mtf(&t->theory, 0));
     tg_curve *c = tg_results_add_curve(out, "mtf", where, "1/mm", "", mtf->n, predicted);
     if (!c) return tg_no_memory(e, 3 * mtf->n, sizeof *c->x);
     memcpy(c->x, mtf->f_per_mm, mtf->n * sizeof *c->x);
     memcpy(c->y, mtf->modulation, mtf->n * sizeof *c->y);
     for (size_t i = 0; predicted && i < mtf->n; i++)
-        c->predicted[i] = tg_theory_mtf(t->image, c->x[i]);
+        c->predicted[i] = tg_theory_mtf(&t->theory, c->x[i]);
     return TG_OK;
 }
 
@@ -35,7 +34,7 @@ static tg_code add_level(const tg_target *t, const char *where, const tg_mtf *mt
     const tg_mtf_level *l = &mtf->level[level];
     tg_result *r = tg_results_add(out, measures[level], where, "1/mm");
     if (!r) return tg_no_memory(e, 1, sizeof *r);
-    r->predicted = tg_theory_mtf_frequency(t->image, tg_mtf_level_of[level]);
+    r->predicted = tg_theory_mtf_frequency(&t->theory, tg_mtf_level_of[level]);
     if (isnan(l->f_per_mm)) {
         tg_result_null(r, "%s", l->why);
         return TG_OK;

@@ -113,6 +113,7 @@ tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phan
     TG_TRY(pool(image, n, &t, e));
     if (*t.lost) goto done;
     t.grid.first_mm[2] = t.z_mm;
+    tg_theory_learn(image, &t.theory);
     TG_TRY(average(&t, e));
     TG_TRY(tg_progress_step(progress, "finding the phantom", 0));
     TG_TRY(tg_locate(image, t.mean, phantom, t.z_mm, &found, e));
@@ -147,6 +148,7 @@ void tg_target_free(tg_target *t)
     tg_free(t->label);
     tg_free(t->clear_mm);
     tg_noise_free(&t->noise);
+    tg_theory_free(&t->theory);
     *t = (tg_target){0};
 }
 

@@ -5,6 +5,7 @@
 #include "io/image.h"
 #include "io/progress.h"
 #include "metrics/result.h"
+#include "metrics/theory.h"
 #include "phantoms/phantom.h"
 
 #include <stdint.h>
@@ -38,7 +39,8 @@ typedef struct {
     int16_t *label;                /* {grid} the solid at each pixel, TG_NO_SOLID outside, owned */
     float *clear_mm;               /* {grid} distance to the nearest pixel of another solid, owned */
     tg_noise noise;
-    char lost[200]; /* why the phantom could not be found; "" when it was */
+    tg_theory theory; /* what is to be expected of these slices */
+    char lost[200];   /* why the phantom could not be found; "" when it was */
 } tg_target;
 
 /** Find the phantom in its images and learn spread and noise.

@@ -1,22 +1,10 @@
 #include "metrics/theory.h"
 
 #include "io/memory.h"
-#include "recon/kernel.h"
 #include "recon/weights.h"
 
 #include <math.h>
 #include <string.h>
-
-/* An image's reconstruction in numbers. */
-typedef struct {
-    tg_kernel kernel;
-    double tau_mm;        /* pitch at the axis */
-    double end;           /* fraction of Nyquist where the response ends, at most 1 */
-    double aperture_mm;   /* NaN: unknown */
-    double focal_spot_mm; /* at the axis; 0: a point, or unknown */
-    double views_rad2;    /* sum of the squared shares of the half turn: pi^2 / M for M even views */
-    double unit_per_mu;   /* 1, or HU per 1/mm; NaN: unknown */
-} model;
 
 static tg_code sum_of_squares(const tg_scan *scan, double *sum)
 {
@@ -32,20 +20,28 @@ done:
     return code;
 }
 
-/* @return false: the image does not say enough; else release the kernel */
-static bool understand(const tg_image *image, model *m)
+void tg_theory_learn(const tg_image *image, tg_theory *theory)
 {
     const tg_scan *scan = &image->scan;
     const tg_facts *facts = &image->facts;
-    if (!scan->channels || !image->kernel || !image->method || strcmp(image->method, "fbp") != 0) return false;
-    *m = (model){.tau_mm = tg_scan_pitch_mm(scan), .aperture_mm = facts->aperture_mm.v};
-    m->unit_per_mu = image->unit == TG_HU ? 1000 / facts->mu_water_per_mm.v : 1;
+    *theory = (tg_theory){0};
+    if (!scan->channels || !image->kernel || !image->method || strcmp(image->method, "fbp") != 0) return;
+    theory->tau_mm = tg_scan_pitch_mm(scan);
+    theory->aperture_mm = facts->aperture_mm.v;
+    theory->unit_per_mu = image->unit == TG_HU ? 1000 / facts->mu_water_per_mm.v : 1;
     if (scan->geometry != TG_PARALLEL && facts->focal_spot_mm.v > 0)
-        m->focal_spot_mm = facts->focal_spot_mm.v * (1 - scan->source_axis_mm / scan->source_detector_mm);
-    if (sum_of_squares(scan, &m->views_rad2) != TG_OK || tg_kernel_read(image->kernel, &m->kernel, NULL) != TG_OK)
-        return false;
-    m->end = fmin(tg_kernel_end(&m->kernel), 1);
-    return true;
+        theory->focal_spot_mm = facts->focal_spot_mm.v * (1 - scan->source_axis_mm / scan->source_detector_mm);
+    if (sum_of_squares(scan, &theory->views_rad2) != TG_OK ||
+        tg_kernel_read(image->kernel, &theory->kernel, NULL) != TG_OK)
+        return;
+    theory->end = fmin(tg_kernel_end(&theory->kernel), 1);
+    theory->known = true;
+}
+
+void tg_theory_free(tg_theory *theory)
+{
+    tg_kernel_free(&theory->kernel);
+    *theory = (tg_theory){0};
 }
 
 static double sinc(double x)
@@ -53,89 +49,57 @@ static double sinc(double x)
     return x != 0 ? sin(M_PI * x) / (M_PI * x) : 1;
 }
 
-static double response(const model *m, double f_per_mm)
+static double response(const tg_theory *t, double f_per_mm)
 {
-    const double fraction = 2 * f_per_mm * m->tau_mm;
-    return fraction <= m->end ? tg_kernel_response(&m->kernel, fraction) : 0;
+    const double fraction = 2 * f_per_mm * t->tau_mm;
+    return fraction <= t->end ? tg_kernel_response(&t->kernel, fraction) : 0;
 }
 
-static double mtf(const model *m, double f_per_mm)
+double tg_theory_mtf(const tg_theory *t, double f_per_mm)
 {
-    return fabs(response(m, f_per_mm) / tg_kernel_response(&m->kernel, 0) * pow(sinc(f_per_mm * m->tau_mm), 2) *
-                sinc(f_per_mm * m->aperture_mm) * sinc(f_per_mm * m->focal_spot_mm));
+    if (!t->known) return NAN;
+    return fabs(response(t, f_per_mm) / tg_kernel_response(&t->kernel, 0) * pow(sinc(f_per_mm * t->tau_mm), 2) *
+                sinc(f_per_mm * t->aperture_mm) * sinc(f_per_mm * t->focal_spot_mm));
 }
 
-static double mtf_frequency(const model *m, double level)
+double tg_theory_mtf_frequency(const tg_theory *t, double level)
 {
     enum { STEPS = 1000, HALVINGS = 40 };
-    const double step = m->end / (2 * m->tau_mm) / STEPS;
+    if (!t->known) return NAN;
+    const double step = t->end / (2 * t->tau_mm) / STEPS;
     for (int i = 1; i <= STEPS; i++) {
         double low = (i - 1) * step, high = i * step;
-        if (!(mtf(m, low) > level && mtf(m, high) <= level)) continue;
+        if (!(tg_theory_mtf(t, low) > level && tg_theory_mtf(t, high) <= level)) continue;
         for (int k = 0; k < HALVINGS; k++) {
             const double middle = 0.5 * (low + high);
-            *(mtf(m, middle) > level ? &low : &high) = middle;
+            *(tg_theory_mtf(t, middle) > level ? &low : &high) = middle;
         }
         return high;
     }
     return NAN;
 }
 
-static double nps(const model *m, double line_variance, double f_per_mm)
+double tg_theory_nps(const tg_theory *t, double line_variance, double f_per_mm)
 {
+    if (!t->known) return NAN;
     if (!(f_per_mm > 0)) return f_per_mm == 0 ? 0 : NAN;
     /* the spectrum of the filtered samples repeats every 1 / tau; interpolation multiplies it by sinc^4 */
-    const double rho = fabs(f_per_mm - round(f_per_mm * m->tau_mm) / m->tau_mm);
-    const double filtered = rho * response(m, rho);
-    return m->unit_per_mu * m->unit_per_mu * m->views_rad2 / M_PI * m->tau_mm * line_variance * filtered * filtered *
-           pow(sinc(f_per_mm * m->tau_mm), 4) / f_per_mm;
+    const double rho = fabs(f_per_mm - round(f_per_mm * t->tau_mm) / t->tau_mm);
+    const double filtered = rho * response(t, rho);
+    return t->unit_per_mu * t->unit_per_mu * t->views_rad2 / M_PI * t->tau_mm * line_variance * filtered * filtered *
+           pow(sinc(f_per_mm * t->tau_mm), 4) / f_per_mm;
 }
 
 /* All repetitions of the spectrum together: sum_k sinc^4(u + k) = (2 + cos 2 pi u) / 3. */
-static double sd(const model *m, double line_variance)
+double tg_theory_sd(const tg_theory *t, double line_variance)
 {
     enum { CELLS = 4096 };
-    const double du = 0.5 * m->end / CELLS;
+    const double du = 0.5 * t->end / CELLS;
     double sum = 0;
+    if (!t->known) return NAN;
     for (int i = 0; i < CELLS; i++) {
-        const double u = (i + 0.5) * du, filtered = u * response(m, u / m->tau_mm);
+        const double u = (i + 0.5) * du, filtered = u * response(t, u / t->tau_mm);
         sum += filtered * filtered * (2 + cos(2 * M_PI * u)) / 3 * du;
     }
-    return m->unit_per_mu * sqrt(2 * sum * m->views_rad2 * line_variance) / m->tau_mm;
-}
-
-double tg_theory_mtf(const tg_image *image, double f_per_mm)
-{
-    model m = {0};
-    double answer = NAN;
-    if (understand(image, &m)) answer = mtf(&m, f_per_mm);
-    tg_kernel_free(&m.kernel);
-    return answer;
-}
-
-double tg_theory_mtf_frequency(const tg_image *image, double level)
-{
-    model m = {0};
-    double answer = NAN;
-    if (understand(image, &m)) answer = mtf_frequency(&m, level);
-    tg_kernel_free(&m.kernel);
-    return answer;
-}
-
-double tg_theory_nps(const tg_image *image, double line_variance, double f_per_mm)
-{
-    model m = {0};
-    double answer = NAN;
-    if (understand(image, &m)) answer = nps(&m, line_variance, f_per_mm);
-    tg_kernel_free(&m.kernel);
-    return answer;
-}
-
-double tg_theory_sd(const tg_image *image, double line_variance)
-{
-    model m = {0};
-    double answer = NAN;
-    if (understand(image, &m)) answer = sd(&m, line_variance);
-    tg_kernel_free(&m.kernel);
-    return answer;
+    return t->unit_per_mu * sqrt(2 * sum * t->views_rad2 * line_variance) / t->tau_mm;
 }
