@@ -35,8 +35,9 @@ static tg_code read_range(tg_fits *f, double size, double *least, double *most)
     const double low = f->bitpix == 8 ? 0 : -ldexp(1, f->bitpix - 1);
     const double high = f->bitpix == 8 ? 255 : ldexp(1, f->bitpix - 1) - 1;
     const double a = (zero + scale * low) * size, b = (zero + scale * high) * size;
-    *least = fmin(a, b);
-    *most = fmax(a, b);
+    /* one float further in: the samples are rounded to floats on their way */
+    *least = (double)nextafterf((float)fmin(a, b), INFINITY);
+    *most = (double)nextafterf((float)fmax(a, b), -INFINITY);
 done:
     return code;
 }

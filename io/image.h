@@ -12,7 +12,7 @@ typedef struct {
     tg_scan scan; /* scan.channels = 0: unknown */
     tg_facts facts;
     char *method, *kernel; /* as written in a recipe ("fbp", "hann@0.8"); owned, NULL: unknown */
-    double least, most;    /* values that the file's pixel type cannot go beyond; -INFINITY, INFINITY for float */
+    double least, most;    /* values between which the file's pixel type does not clip; -INFINITY, INFINITY for float */
     float *v;              /* {z, y, x} HU or 1/mm, owned; NaN where the file has no value */
 } tg_image;
 

@@ -406,6 +406,7 @@ static const struct {
                    {8, 1, -128, {0, 1, 2, 127, 128, 255}}, /* signed bytes */
                    {16, 1, 0, {-32768, -1, 0, 1, 2, 32767}},
                    {16, 1, 32768, {-32768, -1, 0, 1, 2, 32767}}, /* unsigned */
+                   {16, 0.025, 0, {-32768, -1, 0, 1, 2, 32767}}, /* the product is above the nearest float */
                    {16, -0.25, 1000, {-32768, -1, 0, 1, 2, 32767}},
                    {32, 1, 0, {-2147483648.0, -1, 0, 1, 2, 2147483647}},
                    {32, 1, 2147483648.0, {-2147483648.0, -1, 0, 1, 2, 2147483647}},
@@ -435,8 +436,13 @@ START_TEST(pixel_type)
         CK_NEAR(image.v[i], zero + scale * pixel_types[_i].stored[i], 1.2e-7, 1.2e-7 * fabs(zero), "BZERO + BSCALE v");
     if (bitpix > 0) {
         const double all = ldexp(1, bitpix), low = bitpix == 8 ? 0 : -all / 2;
-        CK_NEAR(image.least, zero + fmin(scale * low, scale * (low + all - 1)), 1e-15, 0, "the type's least");
-        CK_NEAR(image.most, zero + fmax(scale * low, scale * (low + all - 1)), 1e-15, 0, "the type's most");
+        /* a float further in, 2^-23 of the value, and half as much for its rounding */
+        CK_NEAR(image.least, zero + fmin(scale * low, scale * (low + all - 1)), 1.8e-7, 1e-40, "the type's least");
+        CK_NEAR(image.most, zero + fmax(scale * low, scale * (low + all - 1)), 1.8e-7, 1e-40, "the type's most");
+        for (int i = 0; i < 6 && bitpix < 64; i++) { /* the row's first and last are the type's ends */
+            const double v = (double)image.v[i];
+            ck_assert_int_eq(v > image.least && v<image.most, i> 0 && i < 5);
+        }
     } else {
         ck_assert(isinf(image.least) && isinf(image.most));
     }
