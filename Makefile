@@ -83,7 +83,6 @@ $(B)/replay-%: $(B)/tests/fuzz/fuzz_%.o $(B)/tests/fuzz/replay.o $(B)/libtomogau
 replay: $(FUZZ:%=$(B)/replay-%)
 	@for f in $(FUZZ); do $(B)/replay-$$f tests/fuzz/corpus/$$f/* || exit 1; done
 
-asan: export LSAN_OPTIONS := suppressions=tests/lsan.supp:print_suppressions=0
 asan: export OMP_NUM_THREADS := 2
 asan: ## asan: the same tests under the address and undefined-behaviour sanitizers
 	$(MAKE) V=asan check
@@ -105,8 +104,7 @@ fuzz-%: tests/fuzz/fuzz_%.c $(B)/embedded.c ## fuzz-NAME: T=60 seconds of libFuz
 	@mkdir -p build/fuzz/$*
 	clang $(CPP_) -std=c11 -g -O1 -fsanitize=fuzzer,address,undefined -fno-sanitize-recover=all -Wno-unknown-pragmas \
 	    $< $(LIB_SRC) $(B)/embedded.c $(LIBS_) -lgomp -o build/fuzz/fuzz-$*
-	LSAN_OPTIONS=suppressions=tests/lsan.supp:print_suppressions=0 \
-	    build/fuzz/fuzz-$* -max_total_time=$(T) -timeout=20 -rss_limit_mb=4096 build/fuzz/$* tests/fuzz/corpus/$*
+	build/fuzz/fuzz-$* -max_total_time=$(T) -timeout=20 -rss_limit_mb=4096 build/fuzz/$* tests/fuzz/corpus/$*
 
 lint: ## lint: clang at the same strict level, cppcheck, layout of the sources
 	$(MAKE) CC=clang V=lint WERROR=-Werror build/lint/libtomogauge.a build/lint/tomogauge

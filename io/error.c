@@ -3,7 +3,8 @@
 #include <stdarg.h>
 #include <stdio.h>
 
-static void add(tg_error *e, bool warning, const char *file, int line, const char *format, va_list args)
+__attribute__((format(printf, 5, 0))) static void add(tg_error *e, bool warning, const char *file, int line,
+                                                      const char *format, va_list args)
 {
     if (e->count < TG_MESSAGES) {
         tg_message *m = &e->message[e->count];
