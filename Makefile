@@ -107,7 +107,7 @@ fuzz-%: tests/fuzz/fuzz_%.c $(B)/embedded.c ## fuzz-NAME: T=60 seconds of libFuz
 	build/fuzz/fuzz-$* -max_total_time=$(T) -timeout=20 -rss_limit_mb=4096 build/fuzz/$* tests/fuzz/corpus/$*
 
 lint: ## lint: clang at the same strict level, cppcheck, layout of the sources
-	$(MAKE) CC=clang V=lint WERROR=-Werror build/lint/libtomogauge.a build/lint/tomogauge
+	$(MAKE) CC=clang V=lint WERROR=-Werror build/lint/tomogauge build/lint/check
 	cppcheck --quiet --std=c11 --enable=warning,portability,performance --inline-suppr --error-exitcode=1 -I. $(FLOORS) scripts
 	clang-format --dry-run --Werror $(OUR_C)
 
