@@ -18,13 +18,14 @@ typedef struct {
     const tg_inputs *inputs;
 } tg_provenance;
 
-/** Add a file that was read; FITS files answer with the DATASUM of their image. A path that stands already is kept
- * once. */
+/** Add a file that was read; a path that stands already is kept once. */
 tg_code tg_inputs_add(tg_inputs *in, const char *path, tg_error *e);
 void tg_inputs_free(tg_inputs *in);
 
-/** The whole of a file, NUL-terminated. @param most  bytes; a larger file is refused  @param text  set on success,
- * tg_free */
+/** The whole of a file, NUL-terminated.
+ *  @param most   bytes; a larger file is refused
+ *  @param text   set on success, tg_free
+ *  @param bytes  set on success, without the NUL; may be NULL */
 tg_code tg_read_file(const char *path, size_t most, char **text, size_t *bytes, tg_error *e);
 
 #endif

@@ -18,8 +18,8 @@ void tg_json_add(tg_json *array, tg_json *value);                           /* t
 void tg_json_add_number(tg_json *array, double value);
 void tg_json_add_text(tg_json *array, const char *value);
 
-/** The text, indented, keys in the order they were set, "</" and "<!" escaped so that it can stand in a page. tg_free
- * it. */
+/** The text, indented, keys in the order they were set, "</" and "<!" escaped so that it can stand in a page.
+ *  @param text  set on success, tg_free */
 tg_code tg_json_text(const tg_json *j, char **text, tg_error *e);
 tg_code tg_json_write(const char *path, const tg_json *j, tg_error *e);
 

@@ -8,9 +8,10 @@ typedef struct {
 } tg_output;
 
 /** May this path be written? Its folder must be there and writable. A file that the program did not write itself, or an
- * input, is refused without force. The program knows its own files by the mark in them: FITS by the keyword CREATOR,
- * JSON by "program", CSV and HTML by their first lines, PNG by its Software text.
- *  @param inputs  {n} paths that were read (compared by device and inode) */
+ *  input, is refused without force. The program knows its own files by the mark in them: FITS by the keyword CREATOR,
+ *  JSON by "program", CSV and HTML by their first lines, PNG by its Software text.
+ *  @param inputs  {n} paths that were read (compared by device and inode)
+ *  @return TG_OK, TG_USAGE, TG_MACHINE */
 tg_code tg_output_allowed(const char *path, bool force, const char *const *inputs, size_t n, tg_error *e);
 
 /** Reserve a name in the same folder; nothing stands under `path` yet. */

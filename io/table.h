@@ -15,8 +15,8 @@ typedef struct {
 void tg_cell(char cell[TG_WORD], const char *format, ...) __attribute__((format(printf, 2, 3)));
 
 /** Print rows below a heading. A column without any text is left out. A row with nothing but a name runs across the
- * columns. Where the page is too narrow a long name stands in a line of its own above the rest of its row; if that is
- * not enough the widest columns shrink, and what they cannot hold ends in ~.  @param row  {n} */
+ *  columns. Where the page is too narrow a long name stands in a line of its own above the rest of its row; if that is
+ *  not enough the widest columns shrink, and what they cannot hold ends in ~.  @param row  {n} */
 void tg_table_print(FILE *out, const tg_row *head, const tg_row *row, size_t n);
 
 #endif

@@ -27,8 +27,8 @@ size_t tg_filter_stride(const tg_filter *filter);
 /** Filter the views of one slice, in parallel.
  *  @param weight    {views} factor w of each view
  *  @param line      {views, channels} line integrals [1]
- *  @param filtered  {views, stride} from tg_alloc: channels values [weight / mm] a row; what follows them is the
- * filter's tail */
+ *  @param filtered  {views, stride} from tg_alloc: channels values [weight / mm] a row, and behind them the filter's
+ *                   tail */
 void tg_filter_apply(const tg_filter *filter, const double *weight, const float *line, float *filtered);
 
 #endif

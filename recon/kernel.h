@@ -2,6 +2,7 @@
 #define TG_KERNEL_H
 #include "io/error.h"
 
+/* In the order of the table in kernel.c. */
 #define TG_WINDOWS "ramp shepp-logan cosine hann hamming parzen butterworth"
 
 typedef struct tg_apodisation tg_apodisation; /* a row of the table of windows */

@@ -3,7 +3,7 @@
 #include "io/grid.h"
 #include "io/scan.h"
 
-#define TG_METHODS "fbp"
+#define TG_METHODS "fbp" /* in the order of the table in reconstruct.c */
 
 /** What one reconstruction is: the same keys as options and in a job file. */
 typedef struct {
