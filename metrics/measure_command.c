@@ -3,8 +3,10 @@
 #include "io/memory.h"
 #include "io/output.h"
 #include "metrics/results_file.h"
+#include "metrics/target.h"
 
 #include <stdio.h>
+#include <string.h>
 
 typedef struct {
     tg_text phantom, spec;
@@ -20,6 +22,18 @@ static const tg_field fields[] = {
     {0},
 };
 
+/** An image taken twice would look as if it had no noise.
+ *  @param before  inputs, of which the images begin at `from`, before this one was added */
+static tg_code check_copy(const char *path, const tg_inputs *in, size_t from, size_t before, tg_error *e)
+{
+    if (in->n == before) return tg_fail(e, TG_INPUT, path, 0, "is named twice; repeats are images of other scans");
+    for (size_t i = from; i < before; i++)
+        if (!strcmp(in->input[i].sum, in->input[before].sum))
+            return tg_fail(e, TG_INPUT, path, 0, "holds the same pixels as %s; repeats are images of other scans",
+                           in->input[i].path);
+    return TG_OK;
+}
+
 /** Everything that is read, in the order of the results' list of inputs. */
 static tg_code read_all(const tg_call *call, const measure_options *o, tg_phantom *phantom, tg_image *image,
                         tg_inputs *inputs, tg_error *e)
@@ -28,9 +42,14 @@ static tg_code read_all(const tg_call *call, const measure_options *o, tg_phanto
     TG_TRY(tg_phantom_read(o->phantom.v, phantom, e));
     TG_TRY(tg_inputs_add(inputs, o->phantom.v, e));
     if (o->spec.v) TG_TRY(tg_inputs_add(inputs, o->spec.v, e));
+    const size_t from = inputs->n;
     for (int i = 0; i < call->n; i++) {
-        TG_TRY(tg_fits_read_image(call->operand[i], &image[i], e));
-        TG_TRY(tg_inputs_add(inputs, call->operand[i], e));
+        const char *path = call->operand[i];
+        const size_t before = inputs->n;
+        TG_TRY(tg_fits_read_image(path, &image[i], e));
+        TG_TRY(tg_target_repeats(&image[0], &image[i], path, e));
+        TG_TRY(tg_inputs_add(inputs, path, e));
+        TG_TRY(check_copy(path, inputs, from, before, e));
     }
 done:
     return code;
@@ -45,6 +64,17 @@ static tg_code may_write(const tg_call *call, const tg_inputs *inputs, tg_error 
         paths[i] = inputs->input[i].path;
     if (code == TG_OK) code = tg_output_allowed(call->output, call->force, paths, inputs->n, e);
     tg_free(paths);
+    return code;
+}
+
+/** "a.fits", "a.fits and 2 more" */
+static tg_code name_images(const tg_call *call, tg_text *name, tg_error *e)
+{
+    const size_t bytes = strlen(call->operand[0]) + 32;
+    const tg_code code = TG_NEW(name->v, bytes, e);
+    if (code != TG_OK) return code;
+    snprintf(name->v, bytes, "%s", call->operand[0]);
+    if (call->n > 1) snprintf(name->v + strlen(name->v), 32, " and %d more", call->n - 1);
     return code;
 }
 
@@ -74,7 +104,7 @@ static tg_code run(tg_call *call, const void *options, tg_error *e)
     tg_specification specification = {0};
     const size_t n = (size_t)call->n;
     tg_recipe shown = {0};
-    if (!(shown.name.v = tg_copy_text(call->operand[0]))) TG_TRY(tg_no_memory(e, 1, 1));
+    TG_TRY(name_images(call, &shown.name, e));
     TG_TRY(TG_NEW(image, n, e));
     TG_TRY(TG_NEW(ev.item, 1, e));
     ev.n = 1;

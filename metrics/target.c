@@ -7,6 +7,7 @@
 
 #include <math.h>
 #include <stdio.h>
+#include <string.h>
 
 static bool same_grid(const tg_grid *a, const tg_grid *b)
 {
@@ -17,24 +18,40 @@ static bool same_grid(const tg_grid *a, const tg_grid *b)
     return true;
 }
 
+static bool same_text(const char *a, const char *b)
+{
+    return a && b ? !strcmp(a, b) : a == b;
+}
+
+tg_code tg_target_repeats(const tg_image *first, const tg_image *other, const char *file, tg_error *e)
+{
+    const tg_grid *a = &first->grid, *b = &other->grid;
+    if (!same_grid(a, b))
+        return tg_fail(e, TG_INPUT, file, 0,
+                       "is no repeat of the first image, it lies on another grid: %zu x %zu pixels of %g mm, not "
+                       "%zu x %zu of %g mm; measure it by itself",
+                       b->n[0], b->n[1], b->step_mm[0], a->n[0], a->n[1], a->step_mm[0]);
+    if (first->unit != other->unit)
+        return tg_fail(e, TG_INPUT, file, 0,
+                       "is no repeat of the first image, it is in %s, not %s; measure it by itself",
+                       tg_unit_text(other->unit), tg_unit_text(first->unit));
+    if (!same_text(first->kernel, other->kernel) || !same_text(first->method, other->method))
+        return tg_fail(
+            e, TG_INPUT, file, 0,
+            "is no repeat of the first image, it was made by another method or kernel; measure it by itself");
+    return TG_OK;
+}
+
 static tg_code check_images(const tg_image *image, size_t n, const tg_phantom *phantom, tg_error *e)
 {
-    const char *file = phantom->path;
+    tg_code code = TG_OK;
     if (!n) return tg_fail(e, TG_INPUT, NULL, 0, "there is no image to measure");
-    if (!phantom->n_solids) return tg_fail(e, TG_INPUT, file, 0, "the phantom has no solid; its first is its body");
-    for (size_t i = 1; i < n; i++) {
-        if (!same_grid(&image[0].grid, &image[i].grid))
-            return tg_fail(
-                e, TG_INPUT, NULL, 0,
-                "image %zu lies on another grid than the first (%zu x %zu pixels of %g mm against %zu x %zu of "
-                "%g mm); measure it by itself",
-                i + 1, image[i].grid.n[0], image[i].grid.n[1], image[i].grid.step_mm[0], image[0].grid.n[0],
-                image[0].grid.n[1], image[0].grid.step_mm[0]);
-        if (image[i].unit != image[0].unit)
-            return tg_fail(e, TG_INPUT, NULL, 0, "image %zu is in %s, the first in %s; measure it by itself", i + 1,
-                           tg_unit_text(image[i].unit), tg_unit_text(image[0].unit));
-    }
-    return TG_OK;
+    if (!phantom->n_solids)
+        return tg_fail(e, TG_INPUT, phantom->path, 0, "the phantom has no solid; its first is its body");
+    for (size_t i = 1; i < n; i++)
+        TG_TRY(tg_target_repeats(&image[0], &image[i], NULL, e));
+done:
+    return code;
 }
 
 /** Does the plane, with half of a slice on both sides where there are several, cut the body the same way? */

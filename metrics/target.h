@@ -43,12 +43,16 @@ typedef struct {
     char lost[200];   /* why the phantom could not be found; "" when it was */
 } tg_target;
 
+/** May another image be pooled with the first: grid, unit, method and kernel? @param file  that it came from, or NULL
+ */
+tg_code tg_target_repeats(const tg_image *first, const tg_image *other, const char *file, tg_error *e);
+
 /** Find the phantom in its images and learn spread and noise.
  *  Shift to a tenth of a pixel within 30 mm of its place, any rotation where the pattern has one. When it cannot be
  * found the target is still valid, `lost` says why, and every measure answers null with that why.
- *  @param image  {n} images of one grid and unit, borrowed for the life of the target; all slices that lie inside the
+ *  @param image  {n} images that repeat the first, borrowed for the life of the target; all slices that lie inside the
  *                phantom are pooled, with a warning about those left out
- *  @return TG_OK, TG_INPUT (grids or units differ), TG_MACHINE, TG_STOPPED */
+ *  @return TG_OK, TG_INPUT (no repeats), TG_MACHINE, TG_STOPPED */
 tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phantom, const tg_progress *progress,
                          tg_target *out, tg_error *e);
 void tg_target_free(tg_target *t);

@@ -369,6 +369,10 @@ static const struct {
     {"simulate . scanner.yaml -o x.fits", 3, ".: is not a file"},
     {"reconstruct i.fits -o x.fits", 3, "i.fits: is an image; a sinogram is expected here"},
     {"measure s.fits --phantom p.yaml", 3, "s.fits: is a sinogram; an image is expected here: reconstruct it first"},
+    {"measure i.fits j.fits --phantom p.yaml --check", 3,
+     "j.fits: is no repeat of the first image, it lies on another"},
+    {"measure i.fits i.fits --phantom p.yaml", 3, "i.fits: is named twice"},
+    {"measure i.fits ./i.fits --phantom p.yaml", 3, "./i.fits: holds the same pixels as i.fits"},
     {"evaluate p.yaml -o x", 3, "p.yaml:1: is not a description of a job"},
     {"reconstruct one.fits -o x.fits", 3, "one.fits: no view between"},
     {"reconstruct s.fits --kernel han -o x.fits", 2, "--kernel: 'han' is no window"},
@@ -390,6 +394,7 @@ START_TEST(swapped_files_are_told_in_one_line)
     ck_assert_int_eq(run("simulate p.yaml scanner.yaml -o s.fits"), 0);
     ck_assert_int_eq(run("simulate p.yaml one.yaml -o one.fits"), 0);
     ck_assert_int_eq(run("reconstruct s.fits --pixels 16 -o i.fits"), 0);
+    ck_assert_int_eq(run("reconstruct s.fits --pixels 17 -o j.fits"), 0);
     ck_assert_int_eq(run(swapped[_i].command), swapped[_i].status);
     ck_assert_msg(!strncmp(err, TG_PROGRAM ": ", 11) && !strncmp(err + 11, swapped[_i].says, strlen(swapped[_i].says)),
                   "%s\nsays %s", swapped[_i].command, err);

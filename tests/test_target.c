@@ -377,12 +377,15 @@ START_TEST(pools_slices)
     CK_NEAR(t.mean[48 * 96 + 48], one.v[48 * 96 + 48] + 2, 0, 1e-4, "the mean of 1, 2, 3");
     tg_target_free(&t);
 
-    /* images of other grids or units are not pooled */
+    /* images of other grids, units or kernels are not pooled */
     tg_image both[2] = {one, stack};
     both[1].grid.step_mm[0] = 3;
     ck_assert_int_eq(tg_target_create(both, 2, &phantom, NULL, &t, &e), TG_INPUT);
     both[1] = one;
     both[1].unit = TG_PER_MM;
+    ck_assert_int_eq(tg_target_create(both, 2, &phantom, NULL, &t, &e), TG_INPUT);
+    both[1] = one;
+    both[1].kernel = (char[]){"ramp"};
     ck_assert_int_eq(tg_target_create(both, 2, &phantom, NULL, &t, &e), TG_INPUT);
     ck_assert_int_eq(tg_target_create(both, 0, &phantom, NULL, &t, &e), TG_INPUT);
 
