@@ -3,7 +3,6 @@
 /** The program's side of a command: options from field tables, --help, messages, interrupts. Not part of the library.
  */
 #include "io/fields.h"
-#include "io/input.h"
 #include "io/progress.h"
 
 /** What every command is called with. */

@@ -1,6 +1,8 @@
 #ifndef TG_REGION_H
 #define TG_REGION_H
-#include "io/image.h"
+#include "io/grid.h"
+
+#include <stdbool.h>
 
 typedef enum { TG_DISC, TG_RING, TG_BOX } tg_outline;
 

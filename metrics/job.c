@@ -3,7 +3,6 @@
 #include "io/fits.h"
 #include "io/memory.h"
 #include "io/yaml.h"
-#include "recon/kernel.h"
 #include "recon/reconstruct.h"
 
 #include <stdio.h>

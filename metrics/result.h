@@ -1,5 +1,6 @@
 #ifndef TG_RESULT_H
 #define TG_RESULT_H
+#include "io/error.h"
 #include "io/region.h"
 
 typedef enum { TG_NO_LIMITS, TG_PASS, TG_INCONCLUSIVE, TG_FAIL } tg_verdict; /* the worst of several is the largest */

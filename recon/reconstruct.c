@@ -7,7 +7,6 @@
 #include "recon/weights.h"
 
 #include <math.h>
-#include <stdio.h>
 #include <string.h>
 
 static tg_code backproject_slice(const tg_backprojector *b, const float *filtered, size_t z, tg_image *image,
