@@ -7,7 +7,6 @@ enum { TG_MOST_SUBRAYS = 101 };
 /** What scans: geometry, beam and detector of a simulated scanner. */
 typedef struct {
     tg_text name;
-    char *path;
     tg_scan scan;
     double energy_kev;
     double aperture;        /* of a channel, as a fraction of its pitch; 0: a point */

@@ -117,7 +117,6 @@ static tg_code build(scanner_keys *k, const char *file, tg_scanner *s, tg_error 
 {
     tg_code code = TG_OK;
     tg_scanner made = {.name = k->scanner,
-                       .path = tg_copy_text(file),
                        .energy_kev = k->energy.v,
                        .aperture = k->aperture.v,
                        .subrays = (int)k->subrays.v,
@@ -125,7 +124,6 @@ static tg_code build(scanner_keys *k, const char *file, tg_scanner *s, tg_error 
                        .photons_per_ray = k->photons.v,
                        .seed = k->seed.v};
     k->scanner.v = NULL; /* moved */
-    if (!made.path) TG_TRY(tg_no_memory(e, 1, 1));
     TG_TRY(build_scan(k, file, &made.scan, e));
     *s = made;
 done:
@@ -151,7 +149,6 @@ tg_code tg_scanner_parse(const char *text, size_t bytes, const char *name, tg_sc
 void tg_scanner_free(tg_scanner *s)
 {
     tg_free(s->name.v);
-    tg_free(s->path);
     tg_scan_free(&s->scan);
     *s = (tg_scanner){0};
 }
