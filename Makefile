@@ -14,7 +14,7 @@ WARN := -Wall -Wextra -Wshadow -Wconversion -Wcast-qual -Wmissing-prototypes -Ws
 WARN += $(if $(findstring clang,$(CC)),-Wno-double-promotion)
 FLAGS_release := -O3 -g -fno-math-errno -fno-trapping-math
 FLAGS_asan := -O1 -g -fno-omit-frame-pointer -fsanitize=address,undefined -fno-sanitize-recover=all
-FLAGS_cov := -O0 -g --coverage
+FLAGS_cov := -Og -g --coverage
 C_ = -std=c11 -fopenmp $(WARN) $(WERROR) $(FLAGS_$(V)) $(CFLAGS)
 LD_ = -fopenmp $(FLAGS_$(V)) $(LDFLAGS)
 
