@@ -29,7 +29,7 @@ FUZZ := $(patsubst tests/fuzz/fuzz_%.c,%,$(wildcard tests/fuzz/fuzz_*.c))
 BENCH := $(patsubst tests/bench/bench_%.c,%,$(wildcard tests/bench/bench_*.c))
 REFERENCE := $(wildcard tests/reference/*.py)
 CHART ?= /usr/share/javascript/chart.js/chart.min.js
-EMBED := $(wildcard metrics/page/*) $(wildcard phantoms/*.yaml) $(CHART)
+EMBED := $(wildcard metrics/page/*.css metrics/page/*.js) $(wildcard phantoms/*.yaml) $(CHART)
 OUR_C := $(wildcard $(addsuffix /*.[ch],$(FLOORS) scripts tests tests/fuzz tests/bench))
 
 .PHONY: help all check asan cov truth bench lint format install layers replay reference

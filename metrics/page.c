@@ -228,7 +228,7 @@ static void put_table(FILE *out, const tg_evaluation *ev)
         put_escaped(out, ev->item[i].recipe->name.v);
         fputs("<br>", out);
         put_verdict(out, ev->item[i].verdict);
-        fputs("<span class=\"figure heads\" aria-hidden=\"true\"><span>measured</span><span>&plusmn; "
+        fputs("<span class=\"figure heads\" aria-hidden=\"true\"><span>value</span><span>&plusmn; "
               "U</span><span>specified"
               "</span><span>verdict</span></span></th>",
               out);
@@ -324,7 +324,8 @@ static tg_code put_image(FILE *out, const tg_evaluated *item, tg_error *e)
         fprintf(out, "<br>phantom found %.2f mm to the %s of its place and %.2f mm %s", fabs(item->shift_mm[0]),
                 item->shift_mm[0] < 0 ? "left" : "right", fabs(item->shift_mm[1]),
                 item->shift_mm[1] < 0 ? "below" : "above");
-        if (item->turn_known) fprintf(out, ", turned by %.2f&deg;", item->turn_rad * 180 / M_PI);
+        if (item->turn_known)
+            fprintf(out, ", turned by %.2f&deg;", round(item->turn_rad * 18000 / M_PI) / 100 + 0.0); /* no -0 */
     }
     fputs("</figcaption></figure>\n", out);
 done:
