@@ -212,6 +212,7 @@ tg_code tg_fits_read_image(const char *path, tg_image *out, tg_error *e)
     TG_TRY(read_word(&f, "KERNEL", &out->kernel));
     TG_TRY(read_samples(&f, out, size));
     TG_TRY(read_scan(&f, &out->scan));
+    if (!out->scan.channels) TG_TRY(tg_fits_number(&f, "ZSTEP", &out->scan.row_step_mm)); /* all that is known of it */
     normalise(out);
 done:
     tg_fits_close(&f);

@@ -9,7 +9,7 @@ typedef enum { TG_PER_MM, TG_HU } tg_unit;
 typedef struct {
     tg_grid grid;
     tg_unit unit;
-    tg_scan scan; /* scan.channels = 0: unknown */
+    tg_scan scan; /* scan.channels = 0: unknown; row_step_mm is the thickness of a slice even then, 0: not stated */
     tg_facts facts;
     char *method, *kernel; /* as written in a recipe ("fbp", "hann@0.8"); owned, NULL: unknown */
     double least, most;    /* values between which the file's pixel type does not clip; -INFINITY, INFINITY for float */

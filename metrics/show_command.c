@@ -149,6 +149,7 @@ static void describe_image(const tg_image *image)
          (double)g->n[1] * g->step_mm[1], tidy(tg_grid_mm(g, 0, 0.5 * ((double)g->n[0] - 1))),
          tidy(tg_grid_mm(g, 1, 0.5 * ((double)g->n[1] - 1))));
     if (g->n[2] > 1) line("slices", "%zu from z = %.6g mm in steps of %.6g mm", g->n[2], g->first_mm[2], g->step_mm[2]);
+    if (image->scan.row_step_mm > 0) line("slice thickness", "%.6g mm", image->scan.row_step_mm);
     line("unit", "%s", tg_unit_text(image->unit));
     if (image->method) line("method", "%s", tg_show(image->method).text);
     if (image->kernel) line("kernel", "%s", tg_show(image->kernel).text);

@@ -184,10 +184,10 @@ static bool agrees_number(const char *what, const char *unit, const tg_number *w
     return agrees(what, wanted->line ? a : NULL, isnan(stated) ? NULL : b, !strcmp(a, b), why);
 }
 
-/** A stack states its thickness by its step; one slice does only when its scan says so. */
+/** A stack states its thickness by its step; one slice by its scan, or by ZSTEP in its file. */
 static double slice_mm(const tg_image *image)
 {
-    if (image->scan.channels && image->scan.row_step_mm > 0) return image->scan.row_step_mm;
+    if (image->scan.row_step_mm > 0) return image->scan.row_step_mm;
     return image->grid.n[2] > 1 ? image->grid.step_mm[2] : (double)NAN;
 }
 

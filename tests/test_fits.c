@@ -146,6 +146,24 @@ END_TEST
 
 #define IMAGE "BUNIT   = 'HU'\nCTYPE1  = 'X'\nCTYPE2  = 'Y'\nCUNIT1  = 'mm'\nCUNIT2  = 'mm'\n"
 
+/* A slice of another program states its thickness by one keyword. */
+START_TEST(thickness_of_a_slice)
+{
+    static const char *const cards[] = {FLAT IMAGE "CDELT1  = 1\nCDELT2  = 1\n",
+                                        FLAT IMAGE "CDELT1  = 1\nCDELT2  = 1\nZSTEP   = 5\n"};
+    const float v[6] = {0};
+    tg_error e = {0};
+    for (int stated = 0; stated < 2; stated++) {
+        tg_image image;
+        CK_OK(tg_fits_read_image(put_file(cards[stated], floats(v, 6), 24), &image, &e));
+        ck_assert_uint_eq(image.scan.channels, 0);
+        CK_NEAR(image.scan.row_step_mm, stated ? 5 : 0, 0, 0, "ZSTEP");
+        CK_NEAR(image.grid.step_mm[2], stated ? 5 : 1, 0, 0, "ZSTEP, or as thick as the pixels");
+        tg_image_free(&image);
+    }
+}
+END_TEST
+
 START_TEST(blank_pixels)
 {
     static const unsigned char bytes[] = {0, 5, 0x80, 0, 0, 7, 0, 8, 0, 9, 0, 10};
@@ -577,6 +595,7 @@ Suite *suite_fits(void)
     tcase_add_checked_fixture(tcase, scratch_begin, scratch_end);
     tcase_add_loop_test(tcase, pixel_type, 0, sizeof pixel_types / sizeof *pixel_types);
     tcase_add_test(tcase, blank_pixels);
+    tcase_add_test(tcase, thickness_of_a_slice);
     tcase_add_loop_test(tcase, signs, 0, 8);
     tcase_add_test(tcase, units);
     tcase_add_test(tcase, assumed);

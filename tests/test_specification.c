@@ -149,12 +149,13 @@ START_TEST(conditions)
     if (cases[_i].image_kernel) image.kernel = strcpy(has, cases[_i].image_kernel);
     image.facts.tube_kv.v = cases[_i].image_kv;
     image.facts.energy_kev.v = cases[_i].image_energy;
-    if (cases[_i].image_slice > 0) {
-        image.grid.n[2] = 3; /* a stack states its step */
-        image.grid.step_mm[2] = cases[_i].image_slice;
+    for (int stack = 0; stack < 2; stack++) { /* a stack states its step, a slice what its scan or file says */
+        image.grid.n[2] = stack && cases[_i].image_slice > 0 ? 3 : 1;
+        image.grid.step_mm[2] = stack ? cases[_i].image_slice : 1;
+        image.scan.row_step_mm = stack ? 0 : cases[_i].image_slice;
+        ck_assert_int_eq(tg_specification_covers(&s, &image, why), cases[_i].why == NULL);
+        if (cases[_i].why) ck_assert_msg(strstr(why, cases[_i].why), "says: %s", why);
     }
-    ck_assert_int_eq(tg_specification_covers(&s, &image, why), cases[_i].why == NULL);
-    if (cases[_i].why) ck_assert_msg(strstr(why, cases[_i].why), "says: %s", why);
 }
 END_TEST
 
