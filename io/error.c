@@ -27,6 +27,18 @@ tg_code tg_fail(tg_error *e, tg_code code, const char *file, int line, const cha
     return code;
 }
 
+void tg_hand_on(const tg_error *from, const char *file, tg_error *to)
+{
+    for (size_t i = 0; i < from->count && i < TG_MESSAGES; i++) {
+        const tg_message *m = &from->message[i];
+        const char *where = m->file[0] ? m->file : file;
+        if (m->warning)
+            tg_warn(to, where, m->line, "%s", m->what);
+        else
+            tg_fail(to, from->code, where, m->line, "%s", m->what);
+    }
+}
+
 void tg_note(tg_code *code, tg_code found)
 {
     if (*code == TG_OK || found == TG_MACHINE) *code = found;

@@ -43,6 +43,9 @@ tg_code tg_fail(tg_error *e, tg_code code, const char *file, int line, const cha
 /** Add a warning; the code stays as it is. e may be NULL. */
 void tg_warn(tg_error *e, const char *file, int line, const char *format, ...) __attribute__((format(printf, 4, 5)));
 
+/** Add the messages that a step of the work kept to itself.  @param file  of those that name none, or NULL */
+void tg_hand_on(const tg_error *from, const char *file, tg_error *to);
+
 /** Take a code into account while work goes on to find further faults: the first failure stands, but for TG_MACHINE. */
 void tg_note(tg_code *code, tg_code found);
 

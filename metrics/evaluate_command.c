@@ -4,13 +4,6 @@
 
 #include <stdio.h>
 
-/** Remarks are not lost when the folder is: the terminal shows them, too. */
-static void show_remarks(const tg_error *remarks, tg_error *e)
-{
-    for (size_t i = 0; i < remarks->count && i < TG_MESSAGES; i++)
-        tg_warn(e, remarks->message[i].file, remarks->message[i].line, "%s", remarks->message[i].what);
-}
-
 static tg_code estimate(const tg_job *job, tg_error *e)
 {
     double seconds, mib;
@@ -35,7 +28,7 @@ static tg_code run(tg_call *call, const void *options, tg_error *e)
         goto done;
     }
     TG_TRY(tg_evaluate(&job, call->progress, &ev, e));
-    show_remarks(&ev.remarks, e);
+    tg_hand_on(&ev.remarks, NULL, e); /* the terminal shows them, too */
     TG_TRY(tg_evaluation_write(&ev, call->output, call->force, e));
     TG_TRY(tg_results_text(&ev, &text, e));
     printf("%s\nreport: %s/report.html\n", text, call->output);

@@ -55,19 +55,6 @@ done:
     return code;
 }
 
-/** What a scan cannot give is said of its file. */
-static void hand_on(const tg_error *own, const char *scan, tg_error *e)
-{
-    for (size_t i = 0; i < own->count && i < TG_MESSAGES; i++) {
-        const tg_message *m = &own->message[i];
-        const char *file = *m->file || own->code != TG_INPUT ? m->file : scan;
-        if (m->warning)
-            tg_warn(e, file, m->line, "%s", m->what);
-        else
-            tg_fail(e, own->code, file, m->line, "%s", m->what);
-    }
-}
-
 static tg_code run(tg_call *call, const void *options, tg_error *e)
 {
     const tg_recipe *r = options;
@@ -78,7 +65,7 @@ static tg_code run(tg_call *call, const void *options, tg_error *e)
     if (call->output) TG_TRY(tg_output_allowed(call->output, call->force, call->operand, 1, e));
     TG_TRY(tg_fits_read_sinogram(call->operand[0], &s, e));
     code = call->check ? estimate(&s, r, &own) : reconstruct(call, &s, r, &own);
-    hand_on(&own, call->operand[0], e);
+    tg_hand_on(&own, own.code == TG_MACHINE ? NULL : call->operand[0], e); /* what a scan cannot give is said of it */
 done:
     tg_sinogram_free(&s);
     return code;
