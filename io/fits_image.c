@@ -241,7 +241,8 @@ tg_code tg_fits_write_image(const char *path, const tg_image *image, const tg_pr
     }
     if (axes == 2) {
         tg_fits_put_number(&f, "ZPLANE", g->first_mm[2], "[mm] where the slice is");
-        tg_fits_put_number(&f, "ZSTEP", g->step_mm[2], "[mm] how thick it is");
+        if (image->scan.channels || image->scan.row_step_mm > 0) /* else it is a guess, which is not stated */
+            tg_fits_put_number(&f, "ZSTEP", g->step_mm[2], "[mm] how thick it is");
     }
     put_scan(&f, &image->scan);
     tg_fits_put_facts(&f, &image->facts);
