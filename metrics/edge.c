@@ -65,7 +65,7 @@ static tg_code look_around(const tg_target *t, int solid, const double centre_mm
     size_t n = 0;
     const double blur = skirt * s->width_mm, far = s->radius_mm + s->end_mm;
     const double from = fmax(0, s->radius_mm - s->end_mm - blur);
-    TG_TRY(tg_mtf_intruders(t, solid, centre_mm, s->radius_mm, s->width_mm, from, far + blur, &list, &n, e));
+    TG_TRY(tg_mtf_intruders(t, solid, centre_mm, s->radius_mm, from, far + blur, &list, &n, e));
     for (size_t i = 0; i < n; i++)
         block(blocked, list[i].phi_rad, list[i].r_mm > blur ? asin(blur / list[i].r_mm) : M_PI);
     for (int i = 0; i < SECTORS; i++) {
@@ -190,8 +190,9 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
     /* the spread at the body's edge is only a first guess of its width here */
     for (int pass = 0; pass < 3; pass++) {
         if (radius_mm < least_radius * width) {
-            tg_mtf_refuse(out, "its radius of %.3g mm is less than %g widths of the spread (%.3g mm)", radius_mm,
-                          least_radius, width);
+            tg_mtf_refuse(
+                out, "it has no edge of its own: its radius of %.3g mm is less than %g widths of the spread (%.3g mm)",
+                radius_mm, least_radius, width);
             goto done;
         }
         /* not to the centre, where the pixels are too few to stand for an integral over directions */
@@ -206,12 +207,9 @@ tg_code tg_mtf_by_edge(const tg_target *t, int solid, tg_mtf *out, tg_error *e)
         TG_TRY(look_around(t, solid, centre_mm, &s, &d, out, e));
         if (*out->level[0].why || !find_edge(t, &d, &s, centre_mm, out)) goto done;
         radius_mm = s.radius_mm;
-        TG_TRY(tg_spread_visible(t, &s, out, e));
-        if (*out->level[0].why) goto done;
-        tg_spread_curve(t, &s, out);
-        const double seen = 0.4413 / out->level[TG_MTF_HALF].f_per_mm; /* of a Gaussian with this frequency */
-        if (!(fabs(seen - width) > 0.05 * width)) break;
-        width = fmin(fmax(seen, 0.5 * width), 2 * width);
+        TG_TRY(tg_spread_curve(t, &s, &width, out, e));
+        if (!out->n) goto done;
+        if (width == s.width_mm) break;
     }
     out->region = (tg_region){.outline = TG_RING,
                               .centre_mm = {centre_mm[0], centre_mm[1]},

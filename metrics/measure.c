@@ -25,12 +25,10 @@ static bool large_body(const tg_target *t, int solid)
 /** A circle that stands in another material: thin as a wire, or with an edge of its own. */
 static bool point_or_edge(const tg_target *t, int solid)
 {
-    double centre_mm[2], inside_mm[2], radius_mm;
+    double centre_mm[2], radius_mm;
     if (!tg_target_circle(t, solid, centre_mm, &radius_mm)) return false;
     if (2 * radius_mm > t->spread_mm && radius_mm < 4 * t->spread_mm) return false;
-    tg_target_to_phantom(t, centre_mm, inside_mm);
-    const double outside_mm[3] = {inside_mm[0] + 1.01 * radius_mm, inside_mm[1], t->z_mm};
-    const int around = tg_phantom_solid_at(t->phantom, outside_mm);
+    const int around = tg_target_around(t, centre_mm, radius_mm);
     return around == TG_NO_SOLID || t->phantom->solid[around].material != t->phantom->solid[solid].material;
 }
 
@@ -39,6 +37,14 @@ static bool round_outline(const tg_target *t, int solid)
 {
     double centre_mm[2], radius_mm;
     return tg_target_circle(t, solid, centre_mm, &radius_mm) && radius_mm >= 4 * t->spread_mm;
+}
+
+/** Or one so thin that its image is a point. */
+static bool point_or_outline(const tg_target *t, int solid)
+{
+    double centre_mm[2], radius_mm;
+    return round_outline(t, solid) ||
+           (tg_target_circle(t, solid, centre_mm, &radius_mm) && 2 * radius_mm < t->spread_mm);
 }
 
 const tg_measure tg_measures[] = {
@@ -54,7 +60,7 @@ const tg_measure tg_measures[] = {
     {"mtf10", "frequency", "frequency where the modulation falls to a tenth", false, true, point_or_edge,
      tg_measure_mtf},
     {"diameter", "mm", "diameter at half of the step at the outline", false, false, round_outline, tg_measure_diameter},
-    {"position", "mm", "distance of a solid from its place", true, false, round_outline, tg_measure_position},
+    {"position", "mm", "distance of a solid from its place", true, false, point_or_outline, tg_measure_position},
     {0},
 };
 

@@ -185,7 +185,7 @@ static double field_needed(const tg_target *t, const tg_mtf *out, double level)
     return (double)t->grid.n[0] * 0.5 / (f * sqrt(log(level) / log(last)));
 }
 
-void tg_spread_curve(const tg_target *t, const tg_spread *s, tg_mtf *out)
+static void lay_curve(const tg_target *t, const tg_spread *s, tg_mtf *out)
 {
     enum { WANTED = 64 };
     const double whole = tg_spread_sum(s, 0), most = nyquist(t);
@@ -225,24 +225,6 @@ void tg_spread_curve(const tg_target *t, const tg_spread *s, tg_mtf *out)
 
 /* ---- uncertainty ---- */
 
-/** Weights of the pixels in a figure: w_j = a k_j(f) + b k_j(0) with the background's fit taken along.
- *  @param w  {n} written */
-static void weights(const tg_spread *s, double a, double f, double b, double *w)
-{
-    double pull[TG_SPREAD_TERMS] = {0}, back[TG_SPREAD_TERMS] = {0};
-    for (size_t j = 0; j < s->n; j++) {
-        w[j] = s->share[j] * (a * s->kernel(s, s->r_mm[j], f) + b * s->kernel(s, s->r_mm[j], 0));
-        for (size_t p = 0; p < s->terms; p++)
-            pull[p] += w[j] * s->model[TG_SPREAD_TERMS * j + p];
-    }
-    for (size_t p = 0; p < s->terms; p++)
-        for (size_t q = 0; q < s->terms; q++)
-            back[p] += s->inverse[s->terms * p + q] * pull[q];
-    for (size_t j = 0; j < s->n; j++)
-        for (size_t p = 0; p < s->terms; p++)
-            w[j] -= s->fit[TG_SPREAD_TERMS * j + p] * back[p];
-}
-
 /** Variance of the noise of one slice where the weights are, and its degrees of freedom: between slices, or of one
  *  slice around its fitted background. */
 static double local_variance(const tg_target *t, const tg_spread *s, const double *w, double *dof)
@@ -268,11 +250,29 @@ static double local_variance(const tg_target *t, const tg_spread *s, const doubl
     return sum / second;
 }
 
-/** Standard uncertainty that the noise gives to the sum of the weighted pixels of the mean. */
-static double noise_of(const tg_target *t, const tg_spread *s, const double *w, double *dof)
+double tg_spread_noise(const tg_target *t, const tg_spread *s, double *w, double *dof)
 {
+    double pull[TG_SPREAD_TERMS] = {0}, back[TG_SPREAD_TERMS] = {0};
+    for (size_t j = 0; j < s->n; j++)
+        for (size_t p = 0; p < s->terms; p++)
+            pull[p] += w[j] * s->model[TG_SPREAD_TERMS * j + p];
+    for (size_t p = 0; p < s->terms; p++)
+        for (size_t q = 0; q < s->terms; q++)
+            back[p] += s->inverse[s->terms * p + q] * pull[q];
+    for (size_t j = 0; j < s->n; j++)
+        for (size_t p = 0; p < s->terms; p++)
+            w[j] -= s->fit[TG_SPREAD_TERMS * j + p] * back[p];
     const double variance = local_variance(t, s, w, dof);
     return sqrt(variance * tg_noise_mean_variance(&t->noise, t->grid.n[0], s->index, w, s->n) / (double)t->n);
+}
+
+/** Standard uncertainty of a figure that changes by a times the sum of the kernel at f and b times that at 0.
+ *  @param w  {n} scratch */
+static double noise_of(const tg_target *t, const tg_spread *s, double a, double f, double b, double *w, double *dof)
+{
+    for (size_t j = 0; j < s->n; j++)
+        w[j] = s->share[j] * (a * s->kernel(s, s->r_mm[j], f) + b * s->kernel(s, s->r_mm[j], 0));
+    return tg_spread_noise(t, s, w, dof);
 }
 
 /** What the two tapers leave, as a share of the frequency: found on closed forms of Gaussian, Hann, cosine and
@@ -331,14 +331,18 @@ static double folded(const tg_target *t, const tg_region *ring, double f)
     return left * f / mirror * fabs(sinc(mirror * aperture) / sinc(f * aperture)) / sqrt(2);
 }
 
-tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
+tg_code tg_spread_curve(const tg_target *t, const tg_spread *s, double *width_mm, tg_mtf *out, tg_error *e)
 {
     tg_code code = TG_OK;
     double *w = NULL, dof;
     TG_TRY(TG_NEW(w, s->n, e));
-    weights(s, 0, 0, 1 / tg_spread_sum(s, 0), w);
-    const double u_whole = noise_of(t, s, w, &dof);
-    if (!(u_whole < 0.1)) tg_mtf_refuse(out, "too much noise for its contrast; pool more slices");
+    if (!(noise_of(t, s, 0, 0, 1 / tg_spread_sum(s, 0), w, &dof) < 0.1)) {
+        tg_mtf_refuse(out, "too much noise for its contrast; pool more slices");
+        goto done;
+    }
+    lay_curve(t, s, out);
+    const double seen = 0.4413 / out->level[TG_MTF_HALF].f_per_mm; /* of a Gaussian with this frequency */
+    if (fabs(seen - *width_mm) > 0.05 * *width_mm) *width_mm = fmin(fmax(seen, 0.5 * *width_mm), 2 * *width_mm);
 done:
     tg_free(w);
     return code;
@@ -361,8 +365,8 @@ tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *ou
         const double f = l->f_per_mm, h = 1e-3 * f;
         if (isnan(f)) continue;
         const double slope = (modulation(s, f + h, whole) - modulation(s, f - h, whole)) / (2 * h);
-        weights(s, 1 / (object(s, f) * whole * slope), f, -tg_mtf_level_of[i] / (whole * slope), w);
-        l->u_noise = noise_of(t, s, w, &l->dof);
+        l->u_noise =
+            noise_of(t, s, 1 / (object(s, f) * whole * slope), f, -tg_mtf_level_of[i] / (whole * slope), w, &l->dof);
         l->u_method = share * f;
         l->u_sampling = alias[i] / fabs(slope);
         if (!(l->u_noise < 0.04 * f)) {
@@ -399,26 +403,6 @@ static int matter(const tg_target *t, int solid)
     return solid < 0 ? -1 : (int)t->phantom->solid[solid].material;
 }
 
-/** Material that most of the pixels in a ring show. */
-static tg_code surroundings(const tg_target *t, const tg_region *ring, int *around, tg_error *e)
-{
-    tg_code code = TG_OK;
-    size_t *count = NULL, x0, x1, y0, y1, best = 0;
-    const tg_grid *g = &t->grid;
-    TG_TRY(TG_NEW(count, t->phantom->n_materials + 1, e));
-    tg_region_bounds(ring, g, &x0, &x1, &y0, &y1);
-    for (size_t iy = y0; iy < y1; iy++)
-        for (size_t ix = x0; ix < x1; ix++)
-            if (tg_region_holds(ring, tg_grid_mm(g, 0, (double)ix), tg_grid_mm(g, 1, (double)iy)))
-                count[matter(t, t->label[iy * g->n[0] + ix]) + 1]++;
-    for (size_t i = 1; i <= t->phantom->n_materials; i++)
-        if (count[i] > count[best]) best = i;
-    *around = (int)best - 1;
-done:
-    tg_free(count);
-    return code;
-}
-
 static tg_code add_intruder(tg_intruder **list, size_t *n, double x, double y, int solid, tg_error *e)
 {
     tg_intruder *i = tg_append(list, n, sizeof **list);
@@ -427,23 +411,18 @@ static tg_code add_intruder(tg_intruder **list, size_t *n, double x, double y, i
     return TG_OK;
 }
 
-tg_code tg_mtf_intruders(const tg_target *t, int solid, const double centre_mm[2], double radius_mm, double width_mm,
-                         double from_mm, double to_mm, tg_intruder **list, size_t *n, tg_error *e)
+tg_code tg_mtf_intruders(const tg_target *t, int solid, const double centre_mm[2], double radius_mm, double from_mm,
+                         double to_mm, tg_intruder **list, size_t *n, tg_error *e)
 {
     tg_code code = TG_OK;
     const tg_grid *g = &t->grid;
     const double skin = fmax(g->step_mm[0], g->step_mm[1]);
-    tg_region ring = {.outline = TG_RING,
-                      .centre_mm = {centre_mm[0], centre_mm[1]},
-                      .inner_mm = radius_mm + skin,
-                      .outer_mm = radius_mm + skin + width_mm};
+    const tg_region ring = {
+        .outline = TG_RING, .centre_mm = {centre_mm[0], centre_mm[1]}, .inner_mm = from_mm, .outer_mm = to_mm};
+    const int around = matter(t, tg_target_around(t, centre_mm, radius_mm));
     size_t x0, x1, y0, y1;
-    int around;
     *list = NULL;
     *n = 0;
-    TG_TRY(surroundings(t, &ring, &around, e));
-    ring.inner_mm = from_mm;
-    ring.outer_mm = to_mm;
     tg_region_bounds(&ring, g, &x0, &x1, &y0, &y1);
     for (size_t iy = y0; iy < y1; iy++)
         for (size_t ix = x0; ix < x1; ix++) {

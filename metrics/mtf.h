@@ -81,15 +81,25 @@ bool tg_spread_settle(tg_spread *s, const float *mean);
 /** sum_j kernel(r_j, f) share_j net_j */
 double tg_spread_sum(const tg_spread *s, double f_per_mm);
 
-/** Does the object stand out of the noise, its total by ten standard uncertainties? Else a why goes to `out`: a ratio
- * to that total is linear in the noise only then. */
-tg_code tg_spread_visible(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e);
+/** Standard uncertainty that the noise gives to a sum over the pixels, sum_j w_j net_j, the fit of the background taken
+ *  along.  @param w  {n} changed  @param dof  its degrees of freedom */
+double tg_spread_noise(const tg_target *t, const tg_spread *s, double *w, double *dof);
 
-/** Curve and frequencies at the levels, without uncertainties. */
-void tg_spread_curve(const tg_target *t, const tg_spread *s, tg_mtf *out);
+/** Curve and frequencies at the levels, without uncertainties; a why where the object's total does not stand out of the
+ *  noise by ten standard uncertainties: a ratio to it is linear in the noise only then.
+ *  @param width_mm  in: s->width_mm; changed when the curve shows another width by more than a twentieth: pixels and
+ *                   taper should then be chosen anew */
+tg_code tg_spread_curve(const tg_target *t, const tg_spread *s, double *width_mm, tg_mtf *out, tg_error *e);
 
 /** Uncertainties of the frequencies, once the region is known; those too uncertain for a linear law get a why. */
 tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e);
+
+/** Where the middle of a thin or small solid stands, by the maximum of its product with a Gaussian as wide as its
+ * image: a centre of weight that noise far out does not move.
+ *  @param centre_mm  {2} of the image  @param u_noise,dof,u_sampling  standard uncertainties along one axis [mm]
+ *  @param why  {200} why it could not be found; "" when it was */
+tg_code tg_point_find(const tg_target *t, int solid, double centre_mm[2], double *u_noise, double *dof,
+                      double *u_sampling, char why[200], tg_error *e);
 
 /** Is this pixel a number inside the range of the file's pixel type, in every slice? Else the reason goes to `out`. */
 bool tg_mtf_usable(const tg_target *t, size_t index, tg_mtf *out);
@@ -101,10 +111,9 @@ typedef struct {
 } tg_intruder;
 
 /** Intruders around a circle of radius_mm up to to_mm from its centre and from from_mm on.
- *  @param width_mm  over which the surroundings are looked at, outside the circle
- *  @param list      {*n} tg_free */
-tg_code tg_mtf_intruders(const tg_target *t, int solid, const double centre_mm[2], double radius_mm, double width_mm,
-                         double from_mm, double to_mm, tg_intruder **list, size_t *n, tg_error *e);
+ *  @param list  {*n} tg_free */
+tg_code tg_mtf_intruders(const tg_target *t, int solid, const double centre_mm[2], double radius_mm, double from_mm,
+                         double to_mm, tg_intruder **list, size_t *n, tg_error *e);
 
 /** Its name, for people. */
 const char *tg_intruder_name(const tg_target *t, const tg_intruder *i);

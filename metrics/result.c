@@ -95,12 +95,19 @@ static double variance(const tg_result *r, const char *source, double *dof)
     return sum;
 }
 
-/** 95 % expanded. The t quantile takes real degrees of freedom: JCGM 100 G.4.1 leaves it open to interpolate or to
- *  truncate, and only the first covers 95 %. One degree is the least that has a meaning. */
-static double expanded(double sum, double dof)
+enum { MANY = 1000000 }; /* degrees of freedom: as good as all */
+
+/** The t quantile takes real degrees of freedom: JCGM 100 G.4.1 leaves it open to interpolate or to truncate, and only
+ *  the first covers 95 %. */
+static double student(double dof)
 {
-    const double k = dof > 1e6 ? gsl_cdf_ugaussian_Pinv(0.975) : gsl_cdf_tdist_Pinv(0.975, fmax(dof, 1));
-    return k * sqrt(sum);
+    return dof < MANY ? gsl_cdf_tdist_Pinv(0.975, dof) : gsl_cdf_ugaussian_Pinv(0.975);
+}
+
+/** One degree of freedom is the least that has a meaning. */
+static double expanded(double sum, double dof, double (*k)(double dof))
+{
+    return k(fmin(fmax(dof, 1), MANY)) * sqrt(sum);
 }
 
 void tg_result_budget(tg_result *r, const char *source, double u, double dof)
@@ -116,14 +123,19 @@ void tg_result_budget(tg_result *r, const char *source, double u, double dof)
     *last = (tg_budget){"other", sqrt(a + b), effective(a + b, a * a / last->dof + b * b / dof)};
 }
 
-void tg_result_combine(tg_result *r)
+void tg_result_combine_by(tg_result *r, double (*k)(double dof))
 {
     double dof;
     double sum = variance(r, "noise", &dof);
-    r->uncertainty_noise = expanded(sum, dof);
+    r->uncertainty_noise = expanded(sum, dof, k);
     sum = variance(r, NULL, &dof);
     /* a second line may raise the degrees of freedom, and so lower k: the whole is still no less than its part */
-    r->uncertainty = fmax(expanded(sum, dof), r->uncertainty_noise);
+    r->uncertainty = fmax(expanded(sum, dof, k), r->uncertainty_noise);
+}
+
+void tg_result_combine(tg_result *r)
+{
+    tg_result_combine_by(r, student);
 }
 
 void tg_result_null(tg_result *r, const char *format, ...)

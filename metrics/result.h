@@ -65,6 +65,9 @@ void tg_result_budget(tg_result *r, const char *source, double u, double dof);
  *  freedom (Welch-Satterthwaite; JCGM 100:2008, G.4). */
 void tg_result_combine(tg_result *r);
 
+/** The same for another factor than Student's t.  @param k  95 % factor for some degrees of freedom, at least 1 */
+void tg_result_combine_by(tg_result *r, double (*k)(double dof));
+
 /** Say why a figure could not be had: value NaN. printf-like. */
 void tg_result_null(tg_result *r, const char *format, ...) __attribute__((format(printf, 2, 3)));
 

@@ -2,8 +2,11 @@
 #include "io/memory.h"
 #include "metrics/contour.h"
 #include "metrics/measure.h"
+#include "metrics/mtf.h"
 
+#include <gsl/gsl_cdf.h>
 #include <math.h>
+#include <string.h>
 
 enum { SPREADS = 4 }; /* least radius of a solid whose outline is told from its spread */
 
@@ -20,28 +23,6 @@ static double room_mm(const tg_target *t, int solid, const double centre_mm[2], 
         least = fmin(least, fabs(hypot(x - centre_mm[0], y - centre_mm[1]) - radius_mm));
     }
     return least;
-}
-
-/** What is around a circle: the solid at most of the places a little outside of it. */
-static int surroundings(const tg_target *t, const double centre_mm[2], double radius_mm)
-{
-    enum { PLACES = 72 };
-    int at[PLACES], best = TG_NO_SOLID, most = 0;
-    for (int k = 0; k < PLACES; k++) {
-        const double angle = k * 2 * M_PI / PLACES, r = radius_mm + 2 * t->grid.step_mm[0];
-        const double image[2] = {centre_mm[0] + r * cos(angle), centre_mm[1] + r * sin(angle)};
-        double phantom[2];
-        tg_target_to_phantom(t, image, phantom);
-        at[k] = tg_phantom_solid_at(t->phantom, (const double[3]){phantom[0], phantom[1], t->z_mm});
-        int same = 0;
-        for (int i = 0; i <= k; i++)
-            same += at[i] == at[k];
-        if (same > most) {
-            most = same;
-            best = at[k];
-        }
-    }
-    return best;
 }
 
 /** What is to be looked for, or why it cannot be told (then r is null). */
@@ -64,7 +45,7 @@ static void model(const tg_target *t, int solid, const double centre_mm[2], doub
                        t->spread_mm);
         return;
     }
-    const int around = surroundings(t, centre_mm, radius_mm);
+    const int around = tg_target_around(t, centre_mm, radius_mm);
     const double room = room_mm(t, solid, centre_mm, radius_mm, around) - t->spread_mm;
     m->width_mm = fmin(fmin(SPREADS * t->spread_mm, room), 0.8 * radius_mm);
     if (m->width_mm < 2 * t->spread_mm)
@@ -115,33 +96,48 @@ tg_code tg_measure_diameter(const tg_target *t, int solid, tg_by by, tg_results 
     tg_result_budget(r, "noise", 2 * radius * o.scale_u, o.dof);
     tg_result_budget(r, "method", bent / sqrt(3), INFINITY);
     /* what sampling leaves: a twentieth of a pixel at most on each side */
-    tg_result_budget(r, "pixels", 0.1 * t->grid.step_mm[0] / sqrt(3), INFINITY);
+    tg_result_budget(r, "sampling", 0.1 * t->grid.step_mm[0] / sqrt(3), INFINITY);
     tg_result_combine(r);
 done:
     return code;
+}
+
+/** 95 % for a distance in the plane whose standard uncertainty s along either axis is known: the circle around the
+ * place, for which r^2 / (2 s^2) is distributed as F with 2 and those degrees of freedom. */
+static double in_a_plane(double dof)
+{
+    return sqrt(2 * gsl_cdf_fdist_Pinv(0.95, 2, dof));
 }
 
 tg_code tg_measure_position(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e)
 {
     (void)by;
     tg_code code = TG_OK;
+    double place[2], found[2], radius = 0, u, dof, u_sampling = 0;
     tg_contour o;
-    double place[2], radius = 0;
     tg_result *r = tg_results_add(out, "position", t->phantom->solid[solid].name.v, "mm");
     if (!r) return tg_no_memory(e, 1, sizeof *r);
     r->predicted = 0;
-    TG_TRY(find(t, solid, &o, place, &radius, r, e));
+    if (!*t->lost && tg_target_circle(t, solid, place, &radius) && radius < SPREADS * t->spread_mm) {
+        TG_TRY(tg_point_find(t, solid, found, &u, &dof, &u_sampling, r->why, e));
+    } else {
+        TG_TRY(find(t, solid, &o, place, &radius, r, e));
+        memcpy(found, o.centre_mm, sizeof found);
+        u = o.centre_u_mm;
+        dof = o.dof;
+    }
     if (*r->why) goto done;
-    tg_result_budget(r, "noise", o.centre_u_mm, o.dof);
+    tg_result_budget(r, "noise", u, dof);
+    tg_result_budget(r, "sampling", u_sampling, INFINITY);
     if (solid == t->body) {
         /* the body is what the pose was found by: its place is judged in the image itself */
         r->value = hypot(t->shift_mm[0], t->shift_mm[1]);
     } else {
-        r->value = hypot(o.centre_mm[0] - place[0], o.centre_mm[1] - place[1]);
+        r->value = hypot(found[0] - place[0], found[1] - place[1]);
         const double far = hypot(place[0] - t->shift_mm[0], place[1] - t->shift_mm[1]);
         tg_result_budget(r, "position", hypot(t->shift_u_mm, far * t->turn_u_rad), INFINITY);
     }
-    tg_result_combine(r);
+    tg_result_combine_by(r, in_a_plane);
 done:
     return code;
 }

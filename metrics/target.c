@@ -195,6 +195,27 @@ bool tg_target_circle(const tg_target *t, int solid, double centre_mm[2], double
     return true;
 }
 
+int tg_target_around(const tg_target *t, const double centre_mm[2], double radius_mm)
+{
+    enum { PLACES = 72 };
+    int at[PLACES], best = TG_NO_SOLID, most = 0;
+    for (int k = 0; k < PLACES; k++) {
+        const double angle = k * 2 * M_PI / PLACES, r = radius_mm + 2 * t->grid.step_mm[0];
+        const double image[2] = {centre_mm[0] + r * cos(angle), centre_mm[1] + r * sin(angle)};
+        double phantom[2];
+        tg_target_to_phantom(t, image, phantom);
+        at[k] = tg_phantom_solid_at(t->phantom, (const double[3]){phantom[0], phantom[1], t->z_mm});
+        int same = 0;
+        for (int i = 0; i <= k; i++)
+            same += at[i] == at[k];
+        if (same > most) {
+            most = same;
+            best = at[k];
+        }
+    }
+    return best;
+}
+
 bool tg_target_inner_circle(const tg_target *t, int solid, double centre_mm[2], double *radius_mm)
 {
     double middle[2], radius;

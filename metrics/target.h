@@ -65,6 +65,9 @@ void tg_target_to_phantom(const tg_target *t, const double image_mm[2], double p
  *  @return false: the section is no circle, or the solid does not reach it */
 bool tg_target_circle(const tg_target *t, int solid, double centre_mm[2], double *radius_mm);
 
+/** What is around a circle of the image: the solid at most of the places two pixels outside of it; TG_NO_SOLID. */
+int tg_target_around(const tg_target *t, const double centre_mm[2], double radius_mm);
+
 /** Largest circle around the middle of a solid's section that stays inside it, for solids of any shape: for regions. */
 bool tg_target_inner_circle(const tg_target *t, int solid, double centre_mm[2], double *radius_mm);
 

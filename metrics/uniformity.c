@@ -90,16 +90,11 @@ static void differ(const tg_target *t, const tg_place *edge, const tg_place *cen
     tg_result_combine(r);
 }
 
-/** Widen a 95 % uncertainty so that it holds for the largest of several differences at once (Sidak 1967). */
-static void simultaneous(tg_result *r, int comparisons)
+/** 95 % for the largest of all differences at once (Sidak 1967). That they share the centre makes them hang together,
+ *  for which the bound still holds: they cover a little more than 95 %. */
+static double simultaneous(double dof)
 {
-    double dof = 1e6;
-    for (size_t i = 0; i < r->n_budget; i++)
-        dof = fmin(dof, r->budget[i].dof);
-    const double each = pow(0.95, 1.0 / comparisons);
-    const double wider = gsl_cdf_tdist_Pinv(0.5 + 0.5 * each, dof) / gsl_cdf_tdist_Pinv(0.975, dof);
-    r->uncertainty *= wider;
-    r->uncertainty_noise *= wider;
+    return gsl_cdf_tdist_Pinv(0.5 + 0.5 * pow(0.95, 1.0 / PLACES), dof);
 }
 
 tg_code tg_measure_uniformity(const tg_target *t, int solid, tg_by by, tg_results *out, tg_error *e)
@@ -132,7 +127,7 @@ tg_code tg_measure_uniformity(const tg_target *t, int solid, tg_by by, tg_result
     TG_TRY(tg_place_result(t, "uniformity", body, tg_unit_text(t->unit), out, &r, e));
     *r = difference[worst];
     snprintf(r->where, sizeof r->where, "%s", body);
-    simultaneous(r, PLACES);
+    tg_result_combine_by(r, simultaneous);
 done:
     tg_place_free(&centre);
     for (int i = 0; i < PLACES; i++)

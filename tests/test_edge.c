@@ -119,8 +119,12 @@ static const struct {
     const char *what, *word;
     double radius_mm, contrast;
 } refusals[] = {
-    {"lost", "nowhere", 8, 300},        {"number", "no number", 8, 300},         {"clipped", "clipped", 8, 300},
-    {"small", "less than", 5, 300},     {"covered", "clear of blanket", 8, 300}, {"faint", "noise", 8, 3},
+    {"lost", "nowhere", 8, 300},
+    {"number", "no number", 8, 300},
+    {"clipped", "clipped", 8, 300},
+    {"small", "no edge of its own", 5, 300},
+    {"covered", "clear of blanket", 8, 300},
+    {"faint", "noise", 8, 3},
     {"elsewhere", "not found", 8, 300},
 };
 

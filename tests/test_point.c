@@ -127,7 +127,7 @@ typedef struct {
 static const Refusal refusals[] = {
     {"lost", "nowhere", 0.5, 4},  {"number", "no number", 0.5, 4},        {"clipped", "clipped", 0.5, 4},
     {"coarse", "coarse", 1.1, 4}, {"field", "end of the image", 0.5, 29}, {"rod", "too near to rod", 0.5, 11},
-    {"faint", "noise", 0.5, 4},   {"shape", "no circle", 0.5, 4},
+    {"faint", "noise", 0.5, 4},   {"shape", "no circle", 0.5, 4},         {"thick", "too thick for a wire", 0.5, 4},
 };
 
 static void spoil(const char *what, Taken *t)
@@ -138,6 +138,7 @@ static void spoil(const char *what, Taken *t)
     if (!strcmp(what, "lost")) strcpy(g->lost, "nowhere to be seen");
     if (!strcmp(what, "number")) v[at] = NAN;
     if (!strcmp(what, "clipped")) v[at] = (float)(t->c.image.most = 3071);
+    if (!strcmp(what, "thick")) t->c.phantom.solid[1].half_mm[0] = t->c.phantom.solid[1].half_mm[1] = 0.8;
     if (!strcmp(what, "shape")) t->c.phantom.solid[1].shape = TG_SOLID_BOX;
 }
 
