@@ -75,10 +75,17 @@ static double width_mm(const tg_solid *s)
     return least;
 }
 
-/** The phantom stands clear of the source, and sub-rays do not step over what is in it (a warning). */
+/** The phantom stands clear of the source; warnings where the scan sees less than its body, or sub-rays step over what
+ *  is in it. */
 static tg_code check_fit(const tg_phantom *p, const tg_scanner *s, tg_error *e)
 {
     const double aperture_mm = s->aperture * tg_scan_pitch_mm(&s->scan);
+    const double field_mm = tg_scan_field_radius_mm(&s->scan), body_mm = reach_mm(&p->solid[0]);
+    if (body_mm > field_mm)
+        tg_warn(
+            e, p->path, p->solid[0].line,
+            "'%s' reaches %.1f mm from the axis and the scanner sees %.1f mm: what is cut off makes all values wrong",
+            p->solid[0].name.v, body_mm, field_mm);
     for (size_t i = 0; i < p->n_solids; i++) {
         const tg_solid *solid = &p->solid[i];
         if (s->scan.geometry != TG_PARALLEL && reach_mm(solid) > s->scan.source_axis_mm)

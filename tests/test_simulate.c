@@ -243,21 +243,35 @@ START_TEST(stopped_and_refused)
 }
 END_TEST
 
-START_TEST(too_thin)
+/** Phantom and scanner that draw one warning. */
+static void assert_warns(const char *phantom, const char *scanner, const char *says)
 {
     tg_error e = {0};
     tg_phantom p;
     tg_scanner s;
     tg_sinogram made;
-    const char *phantom = DISC "  - {name: wire, shape: cylinder, material: a, radius: 0.05, length: 20}\n";
     CK_OK(tg_phantom_parse(phantom, strlen(phantom), "p.yaml", &p, &e));
-    CK_OK(tg_scanner_parse(PARALLEL, strlen(PARALLEL), "s.yaml", &s, &e));
+    CK_OK(tg_scanner_parse(scanner, strlen(scanner), "s.yaml", &s, &e));
     CK_OK(tg_simulate(&p, &s, NULL, &made, NULL, &e));
     ck_assert_uint_eq(e.count, 1);
-    ck_assert(e.message[0].warning && strstr(e.message[0].what, "subrays: 9")); /* 0.83 mm / 0.1 mm */
+    ck_assert(e.message[0].warning && strstr(e.message[0].what, says));
     tg_sinogram_free(&made);
     tg_scanner_free(&s);
     tg_phantom_free(&p);
+}
+
+START_TEST(too_thin)
+{
+    assert_warns(DISC "  - {name: wire, shape: cylinder, material: a, radius: 0.05, length: 20}\n", PARALLEL,
+                 "subrays: 9"); /* 0.83 mm / 0.1 mm */
+}
+END_TEST
+
+START_TEST(cut_off)
+{
+    /* 12 and -7 mm off the axis and 60 mm in radius; 70 pitches to each side of the middle channel */
+    assert_warns(DISC, "scanner: s\ngeometry: parallel\nchannels: 141\npitch: 1\nviews: 3\n",
+                 "'body' reaches 73.9 mm from the axis and the scanner sees 70");
 }
 END_TEST
 
@@ -275,5 +289,6 @@ Suite *suite_simulate(void)
     tcase_add_test(tcase, same_bits);
     tcase_add_test(tcase, stopped_and_refused);
     tcase_add_test(tcase, too_thin);
+    tcase_add_test(tcase, cut_off);
     return suite;
 }
