@@ -245,7 +245,7 @@ tg_code tg_locate(const tg_image *image, const float *slice, const tg_phantom *p
                           .grid = &image->grid};
     tg_contour o;
     double *mu = NULL, radius, middle[2];
-    *out = (tg_located){.scale = NAN, .spread_mm = NAN};
+    *out = (tg_located){.spread_mm = NAN};
     m.round = tg_section_circle(m.solid, z_mm, m.middle_mm, &radius);
     m.turns = !m.round;
     m.width_mm = fmin(m.width_mm, 0.8 * radius);
@@ -259,7 +259,6 @@ tg_code tg_locate(const tg_image *image, const float *slice, const tg_phantom *p
     if (*out->lost) goto done;
     TG_TRY(find_fine(&m, &o, out->lost, e));
     if (*out->lost) goto done;
-    out->scale = o.scale;
     out->spread_mm = m.spread_mm;
     TG_TRY(tg_locate_turn(&m, &o, phantom, mu, out, e));
     if (*out->lost) goto done;

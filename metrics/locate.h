@@ -8,7 +8,6 @@ typedef struct {
     tg_pose pose;
     double shift_u_mm, turn_u_rad; /* standard uncertainties */
     bool turn_known;
-    double scale;     /* of the body's outline */
     double spread_mm; /* full width at half maximum of the spread at the body's edge */
     char lost[200];   /* why it could not be found, "" when it was */
 } tg_located;

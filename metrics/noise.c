@@ -3,7 +3,6 @@
 #include "io/memory.h"
 #include "metrics/place.h"
 #include "metrics/trend.h"
-#include "phantoms/random.h"
 #include "recon/fft.h"
 
 #include <complex.h>
@@ -274,7 +273,7 @@ tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e)
     tg_code code = TG_OK;
     size_t *index = NULL, n;
     double *count = NULL, *modes = NULL, square;
-    tg_noise made = {.sd = NAN, .from_slices = t->n > 1};
+    tg_noise made = {.sd = NAN};
     TG_TRY(tg_noise_pixels(t, &index, &n, e));
     const box b = box_around(index, n, t->grid.n[0]);
     /* flat up to the size of a body's regions, a tenth of its diameter; the table covers at most half of the pixels */
@@ -337,68 +336,4 @@ void tg_noise_free(tg_noise *noise)
 {
     tg_free(noise->autocorrelation);
     *noise = (tg_noise){0};
-}
-
-/* ---------------------------------------------------------------- drawing */
-
-struct tg_noise_plan {
-    tg_fft fft;
-    size_t nx, ny;     /* of a patch */
-    double *amplitude; /* of the half spectrum, for unit SD */
-};
-
-enum { PURPOSE = 0x4E4F4953 }; /* of the random streams */
-
-tg_code tg_noise_plan_create(const tg_noise *noise, size_t nx, size_t ny, tg_noise_plan **plan, tg_error *e)
-{
-    tg_code code = TG_OK;
-    tg_noise_plan *made;
-    TG_TRY(TG_NEW(made, 1, e));
-    made->nx = nx;
-    made->ny = ny;
-    const size_t least = 2 * noise->half + 1, reach = noise->half;
-    const size_t px = nx + reach > least ? nx + reach : least, py = ny + reach > least ? ny + reach : least;
-    TG_TRY(tg_fft_create(tg_fft_length(py), tg_fft_length(px), &made->fft, e));
-    const size_t row = made->fft.nx / 2 + 1, size = made->fft.ny * row;
-    TG_TRY(TG_NEW(made->amplitude, size, e));
-    lay_out(noise, &made->fft, 1);
-    tg_fft_forward(&made->fft);
-    double variance = 0;
-    for (size_t i = 0; i < size; i++) { /* an estimate may have negative power: there is none */
-        const double s = fmax(creal(made->fft.half[i]), 0);
-        variance += (i % row && i % row < row - 1 ? 2 : 1) * s / (double)(made->fft.ny * made->fft.nx);
-        made->amplitude[i] = sqrt(s);
-    }
-    for (size_t i = 0; i < size; i++)
-        made->amplitude[i] /= sqrt(variance);
-done:
-    if (code == TG_OK)
-        *plan = made;
-    else
-        tg_noise_plan_free(made);
-    return code;
-}
-
-void tg_noise_draw(const tg_noise_plan *plan, uint64_t seed, uint64_t draw, float *patch)
-{
-    const tg_fft *fft = &plan->fft;
-    const size_t size = fft->ny * (fft->nx / 2 + 1);
-    tg_random random = tg_random_stream(seed, PURPOSE, draw);
-    for (size_t i = 0; i < fft->ny * fft->nx; i++)
-        fft->real[i] = tg_random_normal(&random);
-    tg_fft_forward(fft);
-    for (size_t i = 0; i < size; i++)
-        fft->half[i] *= plan->amplitude[i];
-    tg_fft_inverse(fft);
-    for (size_t y = 0; y < plan->ny; y++)
-        for (size_t x = 0; x < plan->nx; x++)
-            patch[y * plan->nx + x] = (float)fft->real[y * fft->nx + x];
-}
-
-void tg_noise_plan_free(tg_noise_plan *plan)
-{
-    if (!plan) return;
-    tg_fft_free(&plan->fft);
-    tg_free(plan->amplitude);
-    tg_free(plan);
 }

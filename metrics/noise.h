@@ -3,8 +3,6 @@
 #include "metrics/target.h"
 #include "metrics/trend.h"
 
-#include <stdint.h>
-
 /** Noise of a target's slices: from their differences to the mean where there are at least two, else from the uniform
  *  part of the body (three spread widths from everything else) after a smooth trend is removed, with what that took
  *  from the low frequencies put back. The autocorrelation is a sum over pairs of pixels over their number, kept as it
@@ -41,13 +39,5 @@ typedef struct {
 /** @param trend  made over the same pixels  @param out  written on success */
 tg_code tg_noise_weigh(const tg_noise *noise, const tg_trend *trend, const size_t *index, size_t n, tg_noise_worth *out,
                        tg_error *e);
-
-/** A field of noise with this texture and unit SD: a plan for patches of one size, then any number of draws, by
- *  circulant embedding (Dietrich and Newsam 1997). Pure function of seed and draw. A plan serves one thread at a time.
- */
-typedef struct tg_noise_plan tg_noise_plan;
-tg_code tg_noise_plan_create(const tg_noise *noise, size_t nx, size_t ny, tg_noise_plan **plan, tg_error *e);
-void tg_noise_draw(const tg_noise_plan *plan, uint64_t seed, uint64_t draw, float *patch /* {ny, nx} */);
-void tg_noise_plan_free(tg_noise_plan *plan);
 
 #endif

@@ -1,10 +1,10 @@
 #include "metrics/page.h"
 
 #include "io/embedded.h"
-#include "io/json.h"
 #include "io/memory.h"
 #include "io/version.h"
 #include "metrics/display.h"
+#include "metrics/results_file.h"
 #include "metrics/words.h"
 
 #include <math.h>
@@ -348,28 +348,6 @@ static tg_code put_images(FILE *out, const tg_evaluation *ev, tg_error *e)
 
 /* ---- curves ---- */
 
-static tg_json *numbers(const double *v, size_t n)
-{
-    tg_json *list = tg_json_array();
-    for (size_t i = 0; i < n; i++)
-        tg_json_add_number(list, v[i]);
-    return list;
-}
-
-static tg_json *curve_json(const tg_curve *c, const char *reconstruction)
-{
-    tg_json *o = tg_json_object();
-    tg_json_set_text(o, "of", reconstruction);
-    tg_json_set_text(o, "measure", c->measure);
-    tg_json_set_text(o, "where", c->where);
-    tg_json_set_text(o, "x_unit", c->x_unit);
-    tg_json_set_text(o, "y_unit", c->y_unit);
-    tg_json_set(o, "x", numbers(c->x, c->n));
-    tg_json_set(o, "y", numbers(c->y, c->n));
-    if (c->predicted) tg_json_set(o, "expected", numbers(c->predicted, c->n));
-    return o;
-}
-
 static tg_code put_curves(FILE *out, const tg_evaluation *ev, tg_error *e)
 {
     static const char *const titles[][2] = {
@@ -380,7 +358,9 @@ static tg_code put_curves(FILE *out, const tg_evaluation *ev, tg_error *e)
     for (size_t i = 0; i < ev->n; i++)
         for (size_t k = 0; k < ev->item[i].results.n_curves; k++) {
             const tg_curve *c = &ev->item[i].results.curve[k];
-            tg_json_add(list, curve_json(c, ev->item[i].recipe->name.v));
+            tg_json *data = tg_curve_json(c);
+            tg_json_set_text(data, "of", ev->item[i].recipe->name.v);
+            tg_json_add(list, data);
             for (size_t t = 0; t < sizeof titles / sizeof *titles; t++)
                 present[t] = present[t] || !strcmp(c->measure, titles[t][0]);
         }

@@ -80,7 +80,7 @@ static tg_json *result_json(const tg_result *r)
     return j;
 }
 
-static tg_json *curve_json(const tg_curve *c)
+tg_json *tg_curve_json(const tg_curve *c)
 {
     tg_json *j = tg_json_object();
     tg_json_set_text(j, "measure", c->measure);
@@ -118,7 +118,7 @@ static tg_json *item_json(const tg_evaluated *item)
     for (size_t i = 0; i < item->results.n_results; i++)
         tg_json_add(results, result_json(&item->results.result[i]));
     for (size_t i = 0; i < item->results.n_curves; i++)
-        tg_json_add(curves, curve_json(&item->results.curve[i]));
+        tg_json_add(curves, tg_curve_json(&item->results.curve[i]));
     tg_json_set(j, "results", results);
     tg_json_set(j, "curves", curves);
     return j;

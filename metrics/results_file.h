@@ -7,6 +7,9 @@
 /** results.json: the same bytes for the same inputs, seed and build. tg_json_free it. */
 tg_json *tg_results_json(const tg_evaluation *ev);
 
+/** A curve as it stands there; a member of a list, or tg_json_free it. */
+tg_json *tg_curve_json(const tg_curve *c);
+
 /** run.json: what differs from run to run: date, machine, threads, seconds, memory, libraries. */
 tg_json *tg_run_json(const tg_evaluation *ev);
 

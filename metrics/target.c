@@ -122,7 +122,7 @@ tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phan
 {
     tg_code code = TG_OK;
     tg_located found = {0};
-    tg_target t = {.phantom = phantom, .image = image, .scale = NAN, .spread_mm = NAN};
+    tg_target t = {.phantom = phantom, .image = image, .spread_mm = NAN};
     TG_TRY(check_images(image, n, phantom, e));
     t.unit = image->unit;
     t.grid = image->grid;
@@ -135,7 +135,6 @@ tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phan
     TG_TRY(tg_progress_step(progress, "finding the phantom", 0));
     TG_TRY(tg_locate(image, t.mean, phantom, t.z_mm, &found, e));
     snprintf(t.lost, sizeof t.lost, "%s", found.lost);
-    t.scale = found.scale;
     t.spread_mm = found.spread_mm;
     if (*t.lost) goto done;
     t.shift_mm[0] = found.pose.shift_mm[0];

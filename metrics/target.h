@@ -17,7 +17,6 @@ typedef struct {
     double sd;               /* of the uniform part of the body, in the image's unit */
     double dof;              /* effective degrees of freedom of sd */
     double pixels;           /* behind the texture, all slices together; 0: it is known exactly */
-    bool from_slices;        /* from differences of slices; else from the detrended uniform part */
 } tg_noise;
 
 typedef struct {
@@ -33,7 +32,6 @@ typedef struct {
     double shift_mm[2], turn_rad;
     double shift_u_mm, turn_u_rad; /* standard uncertainties */
     bool turn_known;               /* false: the pattern has no rotation, turn_rad is 0 */
-    double scale;                  /* measured size of the body's outline over its nominal size */
     int body;                      /* the solid that is the phantom's body: the first one */
     double spread_mm;              /* full width at half maximum of the spread at the body's edge */
     int16_t *label;                /* {grid} the solid at each pixel, TG_NO_SOLID outside, owned */

@@ -176,7 +176,6 @@ static inline tg_code synthetic_make(const Synthetic *s, Synthetic_case *c, tg_e
                      .grid = grid,
                      .n = s->slices,
                      .turn_known = true,
-                     .scale = 1,
                      .spread_mm = s->fwhm_mm};
     t->grid.n[2] = 1;
     t->grid.first_mm[2] = 0;

@@ -32,7 +32,7 @@
             pointRadius: (p) => (p.dataIndex % 8 === (i * 3) % 8 ? 4 : 0), tension: 0,
         };
         const expected = {
-            label: c.of + ", expected", data: xy(c.x, c.expected || []), borderColor: colour, borderDash: [1, 4],
+            label: c.of + ", expected", data: xy(c.x, c.predicted || []), borderColor: colour, borderDash: [1, 4],
             borderWidth: 1.5, pointStyle: "line", pointRadius: 0, tension: 0,
         };
         return expected.data.length ? [measured, expected] : [measured];
