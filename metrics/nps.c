@@ -25,7 +25,7 @@ typedef struct {
     double *s;    /* {bins} mean over squares and slices */
     double *each; /* {slices, n, bins} */
     bool tapered;
-    double independent; /* number of squares that overlap no other, as far as their statistics go */
+    double independent; /* number of squares and slices that share no noise, as far as their statistics go */
     double step_per_mm, nyquist_per_mm;
     char why[200];
 } spectrum;
@@ -105,17 +105,66 @@ static double overlap(const double *w, size_t side, size_t lag)
 {
     double sum = 0, all = 0;
     for (size_t i = 0; i < side; i++) {
-        all += pow(w[i], 4);
+        all += w[i] * w[i] * w[i] * w[i];
         if (i + lag < side) sum += w[i] * w[i] * w[i + lag] * w[i + lag];
     }
     return sum / all;
+}
+
+/** Number of squares that overlap no other, as far as their statistics go: the variance of the mean of n is that of one
+ *  times sum_ij rho_ij / n^2. */
+static double independent_squares(const spectrum *s, size_t nx, const double *taper)
+{
+    double pairs = 0;
+    for (size_t i = 0; i < s->n; i++)
+        for (size_t j = 0; j < s->n; j++) {
+            const size_t a = s->corner[i], b = s->corner[j];
+            const size_t dx = a % nx > b % nx ? a % nx - b % nx : b % nx - a % nx;
+            const size_t dy = a / nx > b / nx ? a / nx - b / nx : b / nx - a / nx;
+            if (dx < s->side && dy < s->side) pairs += overlap(taper, s->side, dx) * overlap(taper, s->side, dy);
+        }
+    return (double)(s->n * s->n) / pairs;
+}
+
+/** Transform of a square about its mean, under the taper. @param from  its first pixel in a plane of width nx */
+static void transform(const double *from, size_t nx, const double *taper, const tg_fft *fft)
+{
+    const size_t side = fft->nx;
+    double mean = 0;
+    for (size_t y = 0; y < side; y++)
+        for (size_t x = 0; x < side; x++)
+            mean += from[y * nx + x] / (double)(side * side);
+    for (size_t y = 0; y < side; y++)
+        for (size_t x = 0; x < side; x++)
+            fft->real[y * side + x] = taper[y] * taper[x] * (from[y * nx + x] - mean);
+    tg_fft_forward(fft);
+}
+
+/** Add a transform's power to its rings. @param sum  {bins}  @param count,f  {bins} samples of a ring and the sum of
+ *  their frequencies; NULL: known */
+static void add_rings(const tg_fft *fft, const tg_grid *g, const spectrum *s, double *sum, double *count, double *f)
+{
+    const size_t side = s->side, row = side / 2 + 1;
+    for (size_t y = 0; y < side; y++)
+        for (size_t x = 0; x < row; x++) {
+            const double fy = (double)(y <= side / 2 ? y : side - y) / ((double)side * g->step_mm[1]);
+            const double at = hypot((double)x / ((double)side * g->step_mm[0]), fy), ring = round(at / s->step_per_mm);
+            if (ring < 1 || at > s->nyquist_per_mm || ring > (double)s->bins) continue;
+            const size_t bin = (size_t)ring - 1;
+            const double twice = x && x < row - 1 ? 2 : 1;
+            const double _Complex z = fft->half[y * row + x];
+            sum[bin] += twice * (creal(z) * creal(z) + cimag(z) * cimag(z));
+            if (!count) continue;
+            count[bin] += twice;
+            f[bin] += twice * at;
+        }
 }
 
 /** Periodogram of every square and slice, averaged over rings. @param taper  {side} */
 static tg_code analyse(const tg_target *t, const size_t *index, size_t n, const double *taper, spectrum *s, tg_error *e)
 {
     tg_code code = TG_OK;
-    const size_t side = s->side, nx = t->grid.n[0], row = side / 2 + 1;
+    const size_t side = s->side, nx = t->grid.n[0], all = s->slices * s->n;
     const double *step = t->grid.step_mm, slices = (double)t->n;
     double *plane = NULL, *v = NULL, *count = NULL, squared = 0;
     tg_fft fft = {0};
@@ -125,57 +174,29 @@ static tg_code analyse(const tg_target *t, const size_t *index, size_t n, const 
     TG_TRY(TG_NEW(count, s->bins, e));
     TG_TRY(tg_fft_create(side, side, &fft, e));
     tg_trend_over(t->n > 1 ? TG_CONSTANT : TG_CUP, index, n, nx, &trend);
-    for (size_t i = 0; i < side; i++)
-        squared += taper[i] * taper[i] / (double)side;
-    const double scale =
-        step[0] * step[1] / ((double)(side * side) * squared * squared) * (t->n > 1 ? slices / (slices - 1) : 1);
-    memset(s->each, 0, s->slices * s->n * s->bins * sizeof *s->each);
+    memset(s->each, 0, all * s->bins * sizeof *s->each);
     memset(s->f, 0, s->bins * sizeof *s->f);
     memset(s->s, 0, s->bins * sizeof *s->s);
     for (size_t k = 0; k < t->n; k++) {
         residuals(t, k, &trend, index, n, v, plane);
         for (size_t q = 0; q < s->n; q++) {
-            double mean = 0, *each = s->each + (k * s->n + q) * s->bins;
-            for (size_t y = 0; y < side; y++)
-                for (size_t x = 0; x < side; x++)
-                    mean += plane[s->corner[q] + y * nx + x] / (double)(side * side);
-            for (size_t y = 0; y < side; y++)
-                for (size_t x = 0; x < side; x++)
-                    fft.real[y * side + x] = taper[y] * taper[x] * (plane[s->corner[q] + y * nx + x] - mean);
-            tg_fft_forward(&fft);
-            for (size_t y = 0; y < side; y++)
-                for (size_t x = 0; x < row; x++) {
-                    const double fy = (double)(y <= side / 2 ? y : side - y) / ((double)side * step[1]);
-                    const double f = hypot((double)x / ((double)side * step[0]), fy), ring = round(f / s->step_per_mm);
-                    if (ring < 1 || f > s->nyquist_per_mm || ring > (double)s->bins) continue;
-                    const size_t bin = (size_t)ring - 1;
-                    const double twice = x && x < row - 1 ? 2 : 1;
-                    const double _Complex z = fft.half[y * row + x];
-                    each[bin] += twice * scale * (creal(z) * creal(z) + cimag(z) * cimag(z));
-                    if (k || q) continue;
-                    count[bin] += twice;
-                    s->f[bin] += twice * f;
-                }
+            const bool first = !k && !q;
+            transform(plane + s->corner[q], nx, taper, &fft);
+            add_rings(&fft, &t->grid, s, s->each + (k * s->n + q) * s->bins, first ? count : NULL, s->f);
         }
     }
-    for (size_t i = 0; i < s->slices * s->n * s->bins; i++) {
-        s->each[i] /= count[i % s->bins];
-        s->s[i % s->bins] += s->each[i] / (double)(s->slices * s->n);
+    for (size_t i = 0; i < side; i++)
+        squared += taper[i] * taper[i] / (double)side;
+    /* slices minus their mean are worth one slice less */
+    const double lost = t->n > 1 ? slices / (slices - 1) : 1;
+    const double scale = step[0] * step[1] / ((double)(side * side) * squared * squared) * lost;
+    for (size_t i = 0; i < all * s->bins; i++) {
+        s->each[i] *= scale / count[i % s->bins];
+        s->s[i % s->bins] += s->each[i] / (double)all;
     }
     for (size_t i = 0; i < s->bins; i++)
         s->f[i] /= count[i];
-
-    /* mean of n squares: its variance is that of one times sum_ij rho_ij / n^2; slices minus their mean are
-     * worth one slice less */
-    double pairs = 0;
-    for (size_t i = 0; i < s->n; i++)
-        for (size_t j = 0; j < s->n; j++) {
-            const size_t a = s->corner[i], b = s->corner[j];
-            const size_t dx = a % nx > b % nx ? a % nx - b % nx : b % nx - a % nx;
-            const size_t dy = a / nx > b / nx ? a / nx - b / nx : b / nx - a / nx;
-            if (dx < side && dy < side) pairs += overlap(taper, side, dx) * overlap(taper, side, dy);
-        }
-    s->independent = (double)(s->n * s->n) / pairs * fmax(slices - 1, 1);
+    s->independent = independent_squares(s, nx, taper) * fmax(slices - 1, 1);
 done:
     tg_free(plane);
     tg_free(v);
