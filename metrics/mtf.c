@@ -348,6 +348,9 @@ done:
     return code;
 }
 
+/* A figure that method and sampling leave more uncertain than this is none. */
+static const double most_share = 0.15;
+
 tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *out, tg_error *e)
 {
     tg_code code = TG_OK;
@@ -374,6 +377,13 @@ tg_code tg_spread_uncertainty(const tg_target *t, const tg_spread *s, tg_mtf *ou
             snprintf(l->why, sizeof l->why,
                      "too much noise: its standard uncertainty would be %.0f %%; pool more slices",
                      100 * l->u_noise / f);
+        } else if (!(hypot(l->u_method, l->u_sampling) < most_share * f)) {
+            const double share_of_f = hypot(l->u_method, l->u_sampling) / f;
+            l->f_per_mm = NAN;
+            snprintf(l->why, sizeof l->why,
+                     "too coarsely sampled: its standard uncertainty would be %.0f %%; use smaller pixels or an edge "
+                     "off the axis",
+                     100 * share_of_f);
         }
     }
 done:

@@ -428,8 +428,8 @@ static tg_code add_figure(const tg_target *t, const char *name, const spectrum *
     tg_result_budget(r, "resolution", peak ? ring / sqrt(12) : 0.25 * ring * ring / r->value, (double)INFINITY);
     tg_result_combine(r);
     if (s->s[s->bins - 1] > 0.05 * s->s[largest(s->s, s->bins)])
-        snprintf(r->note, sizeof r->note, "the noise reaches beyond the pixels' Nyquist frequency of %.3g per mm",
-                 s->nyquist_per_mm);
+        snprintf(r->note, sizeof r->note,
+                 "the noise reaches beyond the pixels' Nyquist frequency; use a smaller field");
     return TG_OK;
 }
 

@@ -360,7 +360,10 @@ static tg_code put_item(FILE *out, const tg_evaluated *item, tg_error *e)
     const tg_code code = put_table(out, item, &n, e);
     for (size_t i = 0; i < all->n_results; i++)
         if (shown(item, &all->result[i])) put_note(out, &all->result[i]);
-    if (n < all->n_results) fprintf(out, "%*sand %zu more in the results\n", INDENT, "", all->n_results - n);
+    const bool judged = item->specification && !item->unspecified;
+    if (n < all->n_results)
+        fprintf(out, "%*sand %zu more %s, in the results\n", INDENT, "", all->n_results - n,
+                judged ? "without limits" : "that could not be had");
     return code;
 }
 
