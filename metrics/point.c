@@ -194,6 +194,9 @@ tg_code tg_point_find(const tg_target *t, int solid, double centre_mm[2], double
         u2 += 0.5 * pow(tg_spread_noise(t, &s, w, dof), 2);
     }
     *u_noise = sqrt(u2);
+    /* between slices each pixel tells its own noise: over all directions (weights 1) half as many again as along one
+     * axis (cos^2: <cos^2>^2 / <cos^4> = 2 / 3) */
+    if (t->n > 1) *dof *= 1.5;
     *u_sampling = strays(t->spread_mm, fmax(t->grid.step_mm[0], t->grid.step_mm[1]));
     if (!(*u_noise < 0.1 * width)) tg_mtf_refuse(&out, "lost in noise: its place is uncertain by %.2g mm", *u_noise);
 done:
