@@ -33,6 +33,7 @@ tg_code tg_measure_ct_number(const tg_target *t, int solid, tg_by by, tg_results
     r->value = place.mean;
     snprintf(r->note, sizeof r->note, "%s", place.note);
     tg_result_budget(r, "noise", place.u, place.dof);
+    tg_place_budget_slices(t, &place, NULL, r);
     tg_result_budget(r, "position", tg_place_position_u(t, &place), INFINITY);
     tg_result_combine(r);
     TG_TRY(tg_results_add_region(out, &place.region, e));

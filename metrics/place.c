@@ -19,6 +19,7 @@ bool tg_place_valid(const tg_target *t, size_t pixel)
 void tg_place_free(tg_place *p)
 {
     tg_free(p->index);
+    tg_free(p->slice_mean);
     *p = (tg_place){0};
 }
 
@@ -31,18 +32,20 @@ static tg_code figures(const tg_target *t, size_t modes, tg_place *p, tg_error *
     const double slices = (double)t->n;
     tg_trend trend;
     tg_noise_worth worth;
-    double c[TG_CUP], sum = 0, own = 0, square = 0;
+    double c[TG_CUP], own = 0, square = 0;
+    tg_code code = TG_OK;
     tg_trend_over(modes, p->index, p->n, t->grid.n[0], &trend);
-    const tg_code code = tg_noise_weigh(&t->noise, &trend, p->index, p->n, &worth, e);
-    if (code != TG_OK) return code;
+    TG_TRY(TG_NEW(p->slice_mean, t->n, e));
+    TG_TRY(tg_noise_weigh(&t->noise, &trend, p->index, p->n, &worth, e));
 
     for (size_t k = 0; k < t->n; k++) {
         own += tg_trend_remove(&trend, p->index, p->n, t->slice[k], NULL, NULL);
         if (t->n > 1) square += tg_trend_remove(&trend, p->index, p->n, t->slice[k], t->mean, NULL);
         for (size_t i = 0; i < p->n; i++)
-            sum += (double)t->slice[k][p->index[i]];
+            p->slice_mean[k] += (double)t->slice[k][p->index[i]];
+        p->slice_mean[k] /= (double)p->n;
+        p->mean += p->slice_mean[k] / slices;
     }
-    p->mean = sum / (slices * (double)p->n);
     p->single_sd = sqrt(own / (slices * worth.freedom));
     p->sd = t->n > 1 ? sqrt(square / ((slices - 1) * worth.freedom)) : p->single_sd;
     p->sd_dof = worth.sd_dof * fmax(slices - 1, 1);
@@ -55,7 +58,8 @@ static tg_code figures(const tg_target *t, size_t modes, tg_place *p, tg_error *
     const double variance = (p->sd_dof * p->sd * p->sd + lent * t->noise.sd * t->noise.sd) / all;
     p->u = sqrt(variance * worth.mean_variance / slices);
     p->dof = 1 / (1 / all + 1 / worth.mean_dof);
-    return TG_OK;
+done:
+    return code;
 }
 
 tg_code tg_place_take(const tg_target *t, int solid, double clear_mm, size_t least, size_t modes, tg_place *p,
@@ -143,6 +147,19 @@ double tg_place_position_u(const tg_target *t, const tg_place *p)
     const double x = p->region.centre_mm[0] - t->shift_mm[0], y = p->region.centre_mm[1] - t->shift_mm[1];
     const double turned = t->turn_known ? t->turn_u_rad * (p->slope[1] * x - p->slope[0] * y) : 0;
     return hypot(t->shift_u_mm * hypot(p->slope[0], p->slope[1]), turned);
+}
+
+void tg_place_budget_slices(const tg_target *t, const tg_place *place, const tg_place *other, tg_result *r)
+{
+    const double n = (double)t->n, mean = place->mean - (other ? other->mean : 0);
+    const double noise = place->u * place->u + (other ? other->u * other->u : 0);
+    double scatter = 0;
+    if (t->n < 2) return;
+    for (size_t k = 0; k < t->n; k++)
+        scatter += pow(place->slice_mean[k] - (other ? other->slice_mean[k] : 0) - mean, 2) / ((n - 1) * n);
+    const double dof = other ? fmin(place->dof, other->dof) : place->dof;
+    if (scatter > noise && !(noise > 0 && gsl_cdf_fdist_Q(scatter / noise, n - 1, dof) > 0.01))
+        tg_result_budget(r, "slices", sqrt(scatter - noise), n - 1);
 }
 
 double tg_place_sd_expanded(double dof)

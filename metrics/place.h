@@ -17,13 +17,14 @@ typedef struct {
     tg_region region;
     size_t *index; /* {n} flat indices into a slice, owned */
     size_t n;
-    double mean;       /* over pixels and slices */
-    double slope[2];   /* of the mean slice along x and y [unit / mm] */
-    double sd, sd_dof; /* of one slice, told by these pixels: around a trend, from differences where slices allow */
-    double single_sd;  /* of one slice around a trend by itself: structure counts */
-    double u, dof;     /* standard uncertainty of the mean by noise */
-    char note[200];    /* moved from its place, and why; "" */
-    char why[200];     /* why there is nothing to be had from it; "" */
+    double *slice_mean; /* {slices} mean over the pixels of each, owned */
+    double mean;        /* over pixels and slices */
+    double slope[2];    /* of the mean slice along x and y [unit / mm] */
+    double sd, sd_dof;  /* of one slice, told by these pixels: around a trend, from differences where slices allow */
+    double single_sd;   /* of one slice around a trend by itself: structure counts */
+    double u, dof;      /* standard uncertainty of the mean by noise */
+    char note[200];     /* moved from its place, and why; "" */
+    char why[200];      /* why there is nothing to be had from it; "" */
 } tg_place;
 
 /** Does a pixel hold a number within the limits of the file's pixel type, in every slice? */
@@ -48,6 +49,10 @@ bool tg_place_circle(const tg_target *t, int solid, double centre_mm[2], double 
 
 /** Standard uncertainty of a mean from where its region stands. */
 double tg_place_position_u(const tg_target *t, const tg_place *place);
+
+/** Budget line "slices" of a mean, or of the difference of two: what the slices scatter beyond their noise, where that
+ *  is told from chance (F test, 1 %).  @param other  NULL: none */
+void tg_place_budget_slices(const tg_target *t, const tg_place *place, const tg_place *other, tg_result *r);
 
 /** Half width of the 95 % interval of an SD, relative to it: the smallest c for which s (1 - c) .. s (1 + c) covers
  *  sigma with 95 % when s^2 dof / sigma^2 is distributed as chi-square. */

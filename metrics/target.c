@@ -4,6 +4,7 @@
 #include "metrics/label.h"
 #include "metrics/locate.h"
 #include "metrics/noise.h"
+#include "metrics/slices.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -70,7 +71,7 @@ static tg_code pool(const tg_image *image, size_t n, tg_target *t, tg_error *e)
 {
     tg_code code = TG_OK;
     const tg_solid *body = &t->phantom->solid[t->body];
-    size_t all = 0;
+    size_t all = 0, elsewhere = 0;
     double nearest = INFINITY;
     for (size_t i = 0; i < n; i++) {
         all += image[i].grid.n[2];
@@ -90,13 +91,23 @@ static tg_code pool(const tg_image *image, size_t n, tg_target *t, tg_error *e)
     }
     TG_TRY(TG_NEW(t->slice, all, e));
     for (size_t i = 0; i < n; i++)
-        for (size_t k = 0; k < image[i].grid.n[2]; k++)
-            if (inside_body(&image[i], k, body) &&
-                tg_section_same(t->phantom, t->z_mm, tg_grid_mm(&image[i].grid, 2, (double)k)))
-                t->slice[t->n++] = image[i].v + k * tg_grid_slice(&image[i].grid);
-    if (t->n < all)
+        for (size_t k = 0; k < image[i].grid.n[2]; k++) {
+            const float *v = image[i].v + k * tg_grid_slice(&image[i].grid);
+            if (!inside_body(&image[i], k, body) ||
+                !tg_section_same(t->phantom, t->z_mm, tg_grid_mm(&image[i].grid, 2, (double)k))) {
+                elsewhere++;
+            } else if (!tg_slice_shows(v, tg_grid_slice(&image[i].grid))) {
+                char name[64];
+                tg_slice_name(image, n, v, name);
+                tg_warn(e, NULL, 0, "%s left out: it is empty, no two of its pixels differ", name);
+            } else {
+                t->slice[t->n++] = v;
+            }
+        }
+    if (elsewhere)
         tg_warn(e, NULL, 0, "%zu of %zu slices left out: they do not show the section of the phantom at z = %g mm",
-                all - t->n, all, t->z_mm);
+                elsewhere, all, t->z_mm);
+    if (!t->n) snprintf(t->lost, sizeof t->lost, "the image is empty: no part of it stands out");
 done:
     return code;
 }
@@ -149,6 +160,7 @@ tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phan
     TG_TRY(tg_label_clear(t.label, &t.grid, t.clear_mm, e));
     TG_TRY(tg_progress_step(progress, "learning the noise", 0.5));
     TG_TRY(tg_noise_learn(&t, &t.noise, e));
+    TG_TRY(tg_slices_compare(&t, image, n, e));
 done:
     if (code == TG_OK)
         *out = t;

@@ -49,7 +49,8 @@ tg_code tg_target_repeats(const tg_image *first, const tg_image *other, const ch
  *  Shift to a tenth of a pixel within 30 mm of its place, any rotation where the pattern has one. When it cannot be
  * found the target is still valid, `lost` says why, and every measure answers null with that why.
  *  @param image  {n} images that repeat the first, borrowed for the life of the target; all slices that lie inside the
- *                phantom are pooled, with a warning about those left out
+ *                phantom are pooled, with a warning about those left out (empty ones, too) and about one that does
+ *                not agree with the others
  *  @return TG_OK, TG_INPUT (no repeats), TG_MACHINE, TG_STOPPED */
 tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phantom, const tg_progress *progress,
                          tg_target *out, tg_error *e);

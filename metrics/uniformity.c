@@ -85,6 +85,7 @@ static void differ(const tg_target *t, const tg_place *edge, const tg_place *cen
     /* regions so far apart share no noise: the covariance of filtered back-projection falls as 1 / distance^3 */
     tg_result_budget(r, "noise", edge->u, edge->dof);
     tg_result_budget(r, "noise", centre->u, centre->dof);
+    tg_place_budget_slices(t, edge, centre, r);
     tg_result_budget(r, "position", tg_place_position_u(t, edge), INFINITY);
     tg_result_budget(r, "position", tg_place_position_u(t, centre), INFINITY);
     tg_result_combine(r);

@@ -1,5 +1,6 @@
 /* Finding phantoms in drawn slices: the truth is the pose that they were drawn with. */
 #include "io/memory.h"
+#include "metrics/measure.h"
 #include "metrics/target.h"
 #include "phantoms/random.h"
 #include "tests/near.h"
@@ -400,6 +401,86 @@ START_TEST(pools_slices)
 }
 END_TEST
 
+static void as_it_is(float *v, size_t n)
+{
+    (void)v;
+    (void)n;
+}
+static void offset(float *v, size_t n)
+{
+    for (size_t i = 0; i < n; i++)
+        v[i] += 100;
+}
+static void contrast(float *v, size_t n) /* about the body, at 0: its noise is doubled */
+{
+    for (size_t i = 0; i < n; i++)
+        v[i] *= fabsf(v[i]) < 60 ? 2.F : 1.F;
+}
+static void dead(float *v, size_t n)
+{
+    for (size_t i = 0; i < n; i++)
+        v[i] = 0;
+}
+static void without_a_value(float *v, size_t n)
+{
+    for (size_t i = 0; i < n; i++)
+        v[i] = NAN;
+}
+
+static const struct {
+    void (*spoil)(float *v, size_t n);
+    size_t pooled;
+    const char *warning; /* NULL: none */
+} stacks[] = {
+    {as_it_is, 4, NULL},
+    {offset, 4, "slice 3 of image 1 does not agree with the others: the mean of its body is +"},
+    {contrast, 4, "slice 3 of image 1 does not agree with the others: its noise is "},
+    {dead, 3, "slice 3 of image 1 left out: it is empty"},
+    {without_a_value, 3, "slice 3 of image 1 left out: it is empty"},
+};
+
+/* one slice of four that is unlike the others is named, and every interval of a pooled mean holds the truth */
+START_TEST(slices_that_do_not_agree)
+{
+    tg_error e = {0};
+    tg_phantom phantom = parse(rods);
+    tg_image stack = {0};
+    tg_target t;
+    tg_results all = {0};
+    const size_t n = 160 * 160;
+    for (size_t k = 0; k < 4; k++) {
+        const Picture p = {
+            .pixels = 160, .step_mm = 1.5, .fwhm_px = 2, .sd = 10, .noise_fwhm_px = 2, .magnify = 1, .seed = 40 + k};
+        tg_image one;
+        picture(&phantom, &p, &one);
+        tg_grid grid = one.grid;
+        grid.n[2] = 4;
+        grid.first_mm[2] = -1.5;
+        grid.step_mm[2] = 1;
+        if (!k) CK_OK(tg_image_create(&grid, TG_HU, &stack, &e));
+        memcpy(stack.v + k * n, one.v, n * sizeof *one.v);
+        tg_image_free(&one);
+    }
+    stacks[_i].spoil(stack.v + 2 * n, n);
+    CK_OK(tg_target_create(&stack, 1, &phantom, NULL, &t, &e));
+    ck_assert_str_eq(t.lost, "");
+    ck_assert_uint_eq(t.n, stacks[_i].pooled);
+    ck_assert_uint_eq(e.count, stacks[_i].warning ? 1U : 0U);
+    if (stacks[_i].warning) ck_assert_msg(strstr(e.message[0].what, stacks[_i].warning), "'%s'", e.message[0].what);
+    CK_OK(tg_measure_find("ct-number")->run(&t, 0, TG_BY_ANY, &all, &e));
+    CK_OK(tg_measure_find("uniformity")->run(&t, 0, TG_BY_ANY, &all, &e));
+    CK_NEAR(all.result[0].value, 0, 0, 1.5 * all.result[0].uncertainty, "water");
+    /* without an offset of a slice nothing widens the interval: 10 HU, 16 independent pixels at least, four slices */
+    if (stacks[_i].spoil != offset) ck_assert_double_lt(all.result[0].uncertainty, 2.5 * 10 / sqrt(16 * 3));
+    /* an offset of a whole slice leaves no trace in a difference */
+    ck_assert_double_lt(all.result[1].uncertainty, 2.5 * 10 * sqrt(2. / (16 * 3)));
+    tg_results_free(&all);
+    tg_target_free(&t);
+    tg_image_free(&stack);
+    tg_phantom_free(&phantom);
+}
+END_TEST
+
 Suite *suite_target(void);
 Suite *suite_target(void)
 {
@@ -410,5 +491,6 @@ Suite *suite_target(void)
     tcase_add_test(tcase, finds_a_body_larger_than_the_field);
     tcase_add_test(tcase, labels);
     tcase_add_test(tcase, pools_slices);
+    tcase_add_loop_test(tcase, slices_that_do_not_agree, 0, sizeof stacks / sizeof *stacks);
     return suite;
 }
