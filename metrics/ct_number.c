@@ -1,5 +1,6 @@
 #include "metrics/measure.h"
 #include "metrics/place.h"
+#include "metrics/presence.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -20,6 +21,7 @@ tg_code tg_measure_ct_number(const tg_target *t, int solid, tg_by by, tg_results
 {
     tg_code code = TG_OK;
     tg_place place = {0};
+    tg_presence presence;
     tg_result *r;
     (void)by;
     TG_TRY(tg_place_result(t, "ct-number", t->phantom->solid[solid].name.v, tg_unit_text(t->unit), out, &r, e));
@@ -31,7 +33,9 @@ tg_code tg_measure_ct_number(const tg_target *t, int solid, tg_by by, tg_results
         goto done;
     }
     r->value = place.mean;
-    snprintf(r->note, sizeof r->note, "%s", place.note);
+    TG_TRY(tg_presence_find(t, solid, &presence, e));
+    snprintf(r->note, sizeof r->note, "%s",
+             presence == TG_MISSING ? "no outline at its place: is the description right?" : place.note);
     tg_result_budget(r, "noise", place.u, place.dof);
     tg_place_budget_slices(t, &place, NULL, r);
     tg_result_budget(r, "position", tg_place_position_u(t, &place), INFINITY);

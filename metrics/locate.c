@@ -223,10 +223,7 @@ done:
     return code;
 }
 
-/** The energy that the attenuation is looked up at: the scan's, or half of the tube voltage (common practice), or 70
- * keV.
- */
-static double energy_kev(const tg_facts *facts)
+double tg_locate_energy_kev(const tg_facts *facts)
 {
     if (facts->energy_kev.v > 0) return facts->energy_kev.v;
     return facts->tube_kv.v > 0 ? 0.5 * facts->tube_kv.v : 70;
@@ -254,7 +251,7 @@ tg_code tg_locate(const tg_image *image, const float *slice, const tg_phantom *p
         goto done;
     }
     TG_TRY(TG_NEW(mu, phantom->n_materials, e));
-    TG_TRY(tg_phantom_mu(phantom, energy_kev(&image->facts), mu, e));
+    TG_TRY(tg_phantom_mu(phantom, tg_locate_energy_kev(&image->facts), mu, e));
     TG_TRY(find_coarse(&m, &o, out->lost, e));
     if (*out->lost) goto done;
     TG_TRY(find_fine(&m, &o, out->lost, e));

@@ -18,6 +18,10 @@ typedef struct {
 tg_code tg_locate(const tg_image *image, const float *slice, const tg_phantom *phantom, double z_mm, tg_located *out,
                   tg_error *e);
 
+/** The energy that attenuation is looked up at: the scan's, or half of the tube voltage (common practice), or 70 keV.
+ */
+double tg_locate_energy_kev(const tg_facts *facts);
+
 /** Find the turn of a phantom whose outline is known: the polar image of the slice against that of the phantom, by the
  *  correlation over the angle.
  *  @param m,o  the body and its outline as found  @param mu  {n_materials} attenuation of the materials

@@ -6,6 +6,8 @@
 #include "recon/fft.h"
 
 #include <complex.h>
+#include <gsl/gsl_sort.h>
+#include <gsl/gsl_statistics_double.h>
 #include <math.h>
 #include <string.h>
 
@@ -268,12 +270,54 @@ done:
     return code;
 }
 
+double tg_noise_scale(const tg_target *t)
+{
+    return fabs(t->noise.level + (t->unit == TG_HU ? 1000 : 0));
+}
+
+/** Level and SD by medians, around a smooth trend that is fitted again without what stands out by three SD. */
+static tg_code learn_robust(const tg_target *t, const size_t *index, size_t n, tg_noise *noise, tg_error *e)
+{
+    enum { FITS = 5 };
+    tg_code code = TG_OK;
+    double *v = NULL, *size = NULL;
+    size_t *kept = NULL;
+    TG_TRY(TG_NEW(v, n, e));
+    TG_TRY(TG_NEW(size, n, e));
+    TG_TRY(TG_NEW(kept, n, e));
+    for (size_t i = 0; i < n; i++) {
+        v[i] = (double)t->slice[0][index[i]];
+        kept[i] = index[i];
+    }
+    gsl_sort(v, 1, n);
+    noise->level = gsl_stats_median_from_sorted_data(v, 1, n);
+    for (int k = 0; k < FITS; k++) {
+        tg_trend trend;
+        tg_trend_over(TG_CUP, kept, n, t->grid.n[0], &trend);
+        tg_trend_remove(&trend, kept, n, t->slice[0], NULL, v);
+        for (size_t i = 0; i < n; i++)
+            size[i] = fabs(v[i]);
+        gsl_sort(size, 1, n);
+        noise->robust_sd = 1.4826 * gsl_stats_median_from_sorted_data(size, 1, n);
+        size_t left = 0;
+        for (size_t i = 0; i < n; i++)
+            if (fabs(v[i]) <= 3 * noise->robust_sd) kept[left++] = kept[i];
+        if (left < TG_LEAST_PIXELS) break; /* no noise: nothing lies within three times nothing */
+        n = left;
+    }
+done:
+    tg_free(v);
+    tg_free(size);
+    tg_free(kept);
+    return code;
+}
+
 tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e)
 {
     tg_code code = TG_OK;
     size_t *index = NULL, n;
     double *count = NULL, *modes = NULL, square;
-    tg_noise made = {.sd = NAN};
+    tg_noise made = {.sd = NAN, .level = NAN, .robust_sd = NAN};
     TG_TRY(tg_noise_pixels(t, &index, &n, e));
     const box b = box_around(index, n, t->grid.n[0]);
     /* flat up to the size of a body's regions, a tenth of its diameter; the table covers at most half of the pixels */
@@ -321,6 +365,7 @@ tg_code tg_noise_learn(const tg_target *t, tg_noise *noise, tg_error *e)
         made.dof = made.pixels;
     }
     made.sd = sqrt(fmax(variance, 0));
+    TG_TRY(learn_robust(t, index, n, &made, e));
 done:
     tg_free(index);
     tg_free(count);

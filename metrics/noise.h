@@ -15,6 +15,9 @@ void tg_noise_free(tg_noise *noise);
  *  within the limits of the file's pixel type.  @param index  {*n} flat indices into a slice, tg_free */
 tg_code tg_noise_pixels(const tg_target *t, size_t **index, size_t *n, tg_error *e);
 
+/** What the body stands out by from nothing: about 1000 HU, or its attenuation. A measure of what matters. */
+double tg_noise_scale(const tg_target *t);
+
 /** Variance of the line integrals through a point of the image that the phantom and the image's photons let expect,
  * mean over directions: exp(p) / N. NaN where the image does not tell energy and photons. */
 double tg_noise_line_variance(const tg_target *t, const double at_mm[2]);

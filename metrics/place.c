@@ -62,11 +62,57 @@ done:
     return code;
 }
 
+/** Was an end of a region's values cut off, as by an export with limits? Many of its pixels hold exactly the largest
+ *  value (smallest for sign -1), far more than the next one, and nothing in the image goes beyond; or all are equal, in
+ *  an image with noise. Values in steps as coarse as the noise tell nothing, nor do those of an image without. */
+static bool cut_off(const tg_target *t, const tg_place *p, double sign, double *end)
+{
+    double last = -INFINITY, next = -INFINITY, step = INFINITY;
+    const size_t all = p->n * t->n;
+    size_t at_last = 0, at_next = 0, beyond = 0;
+    for (size_t k = 0; k < t->n; k++) {
+        for (size_t i = 0; i < p->n; i++) {
+            const double v = sign * (double)t->slice[k][p->index[i]];
+            if (v > last) {
+                next = last;
+                at_next = at_last;
+                last = v;
+                at_last = 0;
+            } else if (v < last && v > next) {
+                next = v;
+                at_next = 0;
+            }
+            at_last += v >= last;
+            at_next += v >= next && v < last;
+        }
+    }
+    if (at_last < 5 || at_last <= all / 50 || at_last <= 2 * at_next) return false;
+    for (size_t k = 0; k < t->n; k++) {
+        for (size_t i = 0; i < tg_grid_slice(&t->grid); i++) {
+            const double v = (double)t->slice[k][i], off = fabs(v - t->noise.level);
+            beyond += sign * v > last;
+            if (off > 0) step = fmin(step, off);
+        }
+    }
+    *end = sign * last;
+    return (!beyond || at_last == all) && t->noise.robust_sd > fmax(2 * step, 1e-4 * tg_noise_scale(t));
+}
+
+/** Does more than noise stand in a region? Noise may vary over an image by a factor of two; a spread beyond that by
+ *  chi-square (one false alarm in a thousand) and above 2 % of the body is something else. */
+static bool disturbed(const tg_target *t, const tg_place *p)
+{
+    const double allowed = 2 * t->noise.robust_sd, dof = p->sd_dof / fmax((double)t->n - 1, 1);
+    return p->single_sd > 0.02 * tg_noise_scale(t) &&
+           !(gsl_cdf_chisq_Q(dof * pow(p->single_sd / allowed, 2), dof) > 1e-3);
+}
+
 tg_code tg_place_take(const tg_target *t, int solid, double clear_mm, size_t least, size_t modes, tg_place *p,
                       tg_error *e)
 {
     tg_code code = TG_OK;
     size_t x0, x1, y0, y1, bad = 0;
+    double end;
     if (p->why[0]) return TG_OK;
     if (!tg_region_bounds(&p->region, &t->grid, &x0, &x1, &y0, &y1)) {
         snprintf(p->why, sizeof p->why, "its region reaches beyond the field of the image");
@@ -83,8 +129,16 @@ tg_code tg_place_take(const tg_target *t, int solid, double clear_mm, size_t lea
                  bad);
     else if (!isfinite(t->noise.sd))
         snprintf(p->why, sizeof p->why, "the body has no uniform part that could tell the noise");
+    else if (cut_off(t, p, 1, &end) || cut_off(t, p, -1, &end))
+        snprintf(p->why, sizeof p->why, "clipped or masked: many of its pixels hold exactly %.6g %s", end,
+                 tg_unit_text(t->unit));
     else
         TG_TRY(figures(t, modes, p, e));
+    if (!p->why[0] && disturbed(t, p))
+        snprintf(
+            p->why, sizeof p->why,
+            "the region is not uniform, its SD is %.3g %s: something stands in it that the description does not have",
+            p->single_sd, tg_unit_text(t->unit));
 done:
     return code;
 }

@@ -4,6 +4,7 @@
 #include "metrics/label.h"
 #include "metrics/locate.h"
 #include "metrics/noise.h"
+#include "metrics/presence.h"
 #include "metrics/slices.h"
 
 #include <math.h>
@@ -161,6 +162,7 @@ tg_code tg_target_create(const tg_image *image, size_t n, const tg_phantom *phan
     TG_TRY(tg_progress_step(progress, "learning the noise", 0.5));
     TG_TRY(tg_noise_learn(&t, &t.noise, e));
     TG_TRY(tg_slices_compare(&t, image, n, e));
+    TG_TRY(tg_presence_doubt(&t, t.lost, e));
 done:
     if (code == TG_OK)
         *out = t;

@@ -16,6 +16,8 @@ typedef struct {
     double *autocorrelation; /* {2 half + 1, 2 half + 1} rows along y; 1 at lag 0; owned */
     double sd;               /* of the uniform part of the body, in the image's unit */
     double dof;              /* effective degrees of freedom of sd */
+    double level, robust_sd; /* of the uniform part of the body in the first slice, by medians: structure counts, what
+                                stands in a small part of it does not */
     double pixels;           /* behind the texture, all slices together; 0: it is known exactly */
 } tg_noise;
 
