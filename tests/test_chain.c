@@ -4,12 +4,12 @@
 #include "phantoms/simulate.h"
 #include "recon/reconstruct.h"
 #include "tests/near.h"
+#include "tests/scratch.h"
 
 #include <fitsio.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-#include <unistd.h>
 
 enum { PIXELS = 512 };
 static const double tolerance_hu = 0.1, edge_gap_mm = 10;
@@ -119,18 +119,17 @@ START_TEST(ct_numbers_come_back)
     tg_sinogram s = {0}, again = {0};
     tg_image image = {0};
     tg_recipe recipe = {0};
-    char text[512], path[] = "/tmp/chain-XXXXXX";
+    char text[512];
+    const char *path = scratch("chain.fits");
     CK_OK(tg_phantom_read("phantoms/rods-disc.yaml", &p, &e));
     const int n =
         snprintf(text, sizeof text, "scanner: test\n%s%sviews: 984\nenergy: 70\naverage: line-integrals\nsubrays: 5\n",
                  cases[_i].geometry, cases[_i].rest);
     CK_OK(tg_scanner_parse(text, (size_t)n, "scanner", &scanner, &e));
     CK_OK(tg_simulate(&p, &scanner, NULL, &s, NULL, &e));
-    close(mkstemp(path));
     CK_OK(tg_fits_write_sinogram(path, &s, NULL, &e));
     if (cases[_i].reversed) turn_channels_round(path);
     CK_OK(tg_fits_read_sinogram(path, &again, &e));
-    remove(path);
     CK_OK(tg_fields_default(tg_recipe_fields, &recipe, &e));
     recipe.pixels.v = PIXELS;
     recipe.field_mm = (tg_number){212, 1};
@@ -150,6 +149,7 @@ Suite *suite_chain(void);
 Suite *suite_chain(void)
 {
     SUITE_BEGIN("chain", 120);
+    tcase_add_checked_fixture(tcase, scratch_begin, scratch_end);
     tcase_add_loop_test(tcase, ct_numbers_come_back, 0, sizeof cases / sizeof *cases);
     return suite;
 }
