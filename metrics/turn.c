@@ -24,6 +24,7 @@ typedef struct {
 typedef struct {
     double cross[ANGLES]; /* slice and phantom turned by an angle */
     double own[ANGLES];   /* phantom and phantom turned by an angle */
+    double mirrored;      /* slice and mirror image of the phantom, in the turn that is best */
     double area_mm2;
     double noise;    /* SD of the slice's contrast about the phantom in its best turn */
     double likeness; /* correlation coefficient of the two where the phantom's pattern is strong, noise apart */
@@ -196,8 +197,8 @@ done:
 static tg_code agree(const polar *p, agreement *a, tg_error *e)
 {
     tg_code code = TG_OK;
-    tg_fft fft[4] = {0}; /* slice, phantom, sums of their products */
-    for (int i = 0; i < 4; i++)
+    tg_fft fft[5] = {0}; /* slice, phantom, sums of their products: cross, own, mirrored */
+    for (int i = 0; i < 5; i++)
         TG_TRY(tg_fft_create(1, ANGLES, &fft[i], e));
     for (size_t k = 0; k < p->rings; k++) {
         const double cell = 2 * M_PI / ANGLES * ring_mm(p, k) * p->step_mm;
@@ -211,16 +212,19 @@ static tg_code agree(const polar *p, agreement *a, tg_error *e)
         for (size_t i = 0; i <= ANGLES / 2; i++) {
             fft[2].half[i] += cell * fft[0].half[i] * conj(fft[1].half[i]);
             fft[3].half[i] += cell * fft[1].half[i] * conj(fft[1].half[i]);
+            fft[4].half[i] += cell * fft[0].half[i] * fft[1].half[i];
         }
     }
     tg_fft_inverse(&fft[2]);
     tg_fft_inverse(&fft[3]);
+    tg_fft_inverse(&fft[4]);
     for (size_t i = 0; i < ANGLES; i++) {
         a->cross[i] = fft[2].real[i];
         a->own[i] = fft[3].real[i];
+        a->mirrored = fmax(a->mirrored, fft[4].real[i]);
     }
 done:
-    for (int i = 0; i < 4; i++)
+    for (int i = 0; i < 5; i++)
         tg_fft_free(&fft[i]);
     return code;
 }
@@ -270,13 +274,19 @@ static double slack(const tg_contour_model *m, const tg_contour *o)
 }
 
 /** Whether the best turn stands out: against noise, against what else is in the slice, and against other turns. */
-static void doubt(const agreement *a, const bool *may, size_t best, int order, double spread_mm, char lost[200])
+static void doubt(const agreement *a, const bool *may, size_t best, int order, bool round, double spread_mm,
+                  char lost[200])
 {
     const double gain = a->cross[best] / a->own[0];
     /* standard uncertainty of cross, for noise that passed the same Gaussian spread: correlated over 2.27 FWHM^2 */
     const double u = a->noise * spread_mm * sqrt(2.27 * a->own[0]);
     if (!(a->cross[best] > 5 * u)) {
         snprintf(lost, 200, "the pattern of the solids does not stand out from the noise");
+        return;
+    }
+    /* the turn of an outline that is not round holds for the phantom as it is, not for its mirror image */
+    if (round && a->mirrored > fmax(1.1 * a->cross[best], a->cross[best] + 5 * u)) {
+        snprintf(lost, 200, "the mirror image of the phantom fits better: the image or the description is mirrored");
         return;
     }
     if (gain < 0.25 || a->likeness < 0.5) {
@@ -375,7 +385,7 @@ tg_code tg_locate_turn(const tg_contour_model *m, const tg_contour *o, const tg_
             best = i;
         }
         TG_TRY(compare(&p, best, a, e));
-        doubt(a, may, best, order, m->spread_mm, out->lost);
+        doubt(a, may, best, order, m->round, m->spread_mm, out->lost);
     }
     if (!*out->lost && (pattern || !m->round)) settle(m, o, a, pattern, best, outline_order, order, out);
 done:

@@ -20,6 +20,10 @@
 
 static const char rods[] = "phantom: rods\n" MATERIALS BODY ROD("a", "ptfe", "50", "0", "8")
     ROD("b", "ldpe", "0", "50", "8") ROD("c", "acrylic", "-50", "0", "8") ROD("d", "bone", "0", "-50", "8");
+static const char uneven[] = "phantom: uneven\n" MATERIALS BODY ROD("a", "ptfe", "50", "0", "8")
+    ROD("b", "ldpe", "10", "48", "8") ROD("c", "acrylic", "-40", "30", "8") ROD("d", "bone", "-20", "-45", "8");
+static const char mirrored[] = "phantom: mirrored\n" MATERIALS BODY ROD("a", "ptfe", "-50", "0", "8")
+    ROD("b", "ldpe", "-10", "48", "8") ROD("c", "acrylic", "40", "30", "8") ROD("d", "bone", "20", "-45", "8");
 static const char wire[] = "phantom: wire\n" MATERIALS BODY ROD("wire", "metal", "-35", "20", "0.5");
 static const char faint[] = "phantom: faint\n" MATERIALS BODY ROD("a", "faint", "45", "0", "12")
     ROD("b", "faint", "-20", "40", "9") ROD("c", "faint", "-25", "-42", "6");
@@ -153,6 +157,7 @@ static const struct {
     {"faint", faint, 2, 3, 2, 1, 0},          {"plain", plain, 2, 20, 2, 0, 0.1},
     {"twins", twins, 2, 10, 2, 2, 0.1},       {"off axis", off_axis, 2, 10, 2, 1, 0.1},
     {"ellipse", ellipse, 2, 5, 2, 1, 0.1},    {"box", box, 2, 20, 2, 1, 0.1},
+    {"uneven", uneven, 2, 20, 2, 1, 0.1},
 };
 
 enum { DRAWS = 4 };
@@ -237,6 +242,8 @@ static const struct {
     {plain, rods, 0, 1, 5, "the pattern"},
     {plain, faint, 0, 1, 20, "the pattern"},
     {ellipse, rods, 0, 1, 5, "the body"},
+    {mirrored, uneven, 0, 1, 5, "mirror image"},
+    {uneven, mirrored, 4, 1, 50, "mirror image"},
     {rods, rods, 1e4, 1, 5, ""}, /* noise alone */
 };
 
