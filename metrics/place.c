@@ -129,7 +129,7 @@ tg_code tg_place_take(const tg_target *t, int solid, double clear_mm, size_t lea
                  bad);
     else if (!isfinite(t->noise.sd))
         snprintf(p->why, sizeof p->why, "the body has no uniform part that could tell the noise");
-    else if (cut_off(t, p, 1, &end) || cut_off(t, p, -1, &end))
+    else if ((p->clipped = cut_off(t, p, 1, &end) || cut_off(t, p, -1, &end)))
         snprintf(p->why, sizeof p->why, "clipped or masked: many of its pixels hold exactly %.6g %s", end,
                  tg_unit_text(t->unit));
     else

@@ -23,6 +23,7 @@ typedef struct {
     double sd, sd_dof;  /* of one slice, told by these pixels: around a trend, from differences where slices allow */
     double single_sd;   /* of one slice around a trend by itself: structure counts */
     double u, dof;      /* standard uncertainty of the mean by noise */
+    bool clipped;       /* why: many pixels hold one value */
     char note[200];     /* moved from its place, and why; "" */
     char why[200];      /* why there is nothing to be had from it; "" */
 } tg_place;

@@ -3,6 +3,7 @@
 #include "metrics/contour.h"
 #include "metrics/measure.h"
 #include "metrics/mtf.h"
+#include "metrics/place.h"
 
 #include <gsl/gsl_cdf.h>
 #include <math.h>
@@ -58,6 +59,7 @@ static tg_code find(const tg_target *t, int solid, tg_contour *o, double centre_
 {
     tg_code code = TG_OK;
     tg_contour_model m;
+    tg_place place = {0};
     bool found = false;
     if (*t->lost) {
         tg_result_null(r, "%s", t->lost);
@@ -68,14 +70,16 @@ static tg_code find(const tg_target *t, int solid, tg_contour *o, double centre_
     if (*r->why) goto done;
     *o = (tg_contour){.centre_mm = {centre_mm[0], centre_mm[1]}, .scale = 1};
     TG_TRY(tg_contour_find(&m, o, &found, e));
+    TG_TRY(tg_place_mean(t, solid, &place, e));
     const tg_image *image = t->image;
     if (!found || o->seen < 0.75)
         tg_result_null(r, "its outline is not in the image as a whole, or does not stand out");
     else if (o->jitter_mm > 0.2 * t->spread_mm) /* the noise of a profile is more than a fifth of the step */
         tg_result_null(r, "its outline is lost in noise: it strays by %.2g mm", o->jitter_mm);
-    else if (fmin(o->inside, o->outside) <= image->least || fmax(o->inside, o->outside) >= image->most)
+    else if (place.clipped || fmin(o->inside, o->outside) <= image->least || fmax(o->inside, o->outside) >= image->most)
         tg_result_null(r, "the values beside its outline are clipped");
 done:
+    tg_place_free(&place);
     return code;
 }
 
