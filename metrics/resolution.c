@@ -2,17 +2,31 @@
 #include "io/memory.h"
 #include "metrics/measure.h"
 #include "metrics/mtf.h"
+#include "metrics/place.h"
 
 #include <math.h>
 #include <stdio.h>
 #include <string.h>
+
+/** By its edge, unless an export cut the values off: the foot of the edge would be there, its top not. */
+static tg_code measure_edge(const tg_target *t, int solid, tg_mtf *mtf, tg_error *e)
+{
+    tg_place place = {0};
+    tg_code code = tg_place_mean(t, solid, &place, e);
+    if (code == TG_OK && place.clipped)
+        tg_mtf_refuse(mtf, "%s", place.why);
+    else if (code == TG_OK)
+        code = tg_mtf_by_edge(t, solid, mtf, e);
+    tg_place_free(&place);
+    return code;
+}
 
 static tg_code measure_curve(const tg_target *t, int solid, tg_by by, tg_mtf *mtf, tg_error *e)
 {
     double centre_mm[2], radius_mm = INFINITY;
     tg_target_circle(t, solid, centre_mm, &radius_mm);
     if (by == TG_BY_ANY) by = 2 * radius_mm < t->spread_mm ? TG_BY_WIRE : TG_BY_EDGE;
-    return by == TG_BY_WIRE ? tg_mtf_by_point(t, solid, mtf, e) : tg_mtf_by_edge(t, solid, mtf, e);
+    return by == TG_BY_WIRE ? tg_mtf_by_point(t, solid, mtf, e) : measure_edge(t, solid, mtf, e);
 }
 
 static tg_code add_curve(const tg_target *t, const char *where, const tg_mtf *mtf, tg_results *out, tg_error *e)
