@@ -84,9 +84,13 @@ replay: $(FUZZ:%=$(B)/replay-%)
 	@for f in $(FUZZ); do $(B)/replay-$$f tests/fuzz/corpus/$$f/* || exit 1; done
 
 asan: export OMP_NUM_THREADS := 2
+asan: export TG_DRAWS := 40
 asan: ## asan: the same tests under the address and undefined-behaviour sanitizers
 	$(MAKE) V=asan check
 
+# counters shared by threads crawl, and statistics are not the point
+cov: export OMP_NUM_THREADS := 1
+cov: export TG_DRAWS := 20
 cov: ## cov: line coverage of the unit tests, by folder
 	$(MAKE) V=cov build/cov/check build/cov/tomogauge
 	TOMOGAUGE=build/cov/tomogauge build/cov/check
